@@ -1,0 +1,3 @@
+"""The program's version."""
+
+VERSION = "0.1.0"
