@@ -33,10 +33,10 @@ VERDICT_WORDS: dict[Verdict, str] = {
 OUTCOME_WORDS: dict[Outcome, str] = {"pass": "PASS", "fail": "FAIL", "undecided": "UNDECIDED"}
 
 EVIDENCE_WORDS: dict[Evidence, str] = {
-    "proved": "proved on the whole contour",
-    "declared": "proved on the whole contour, resting on stated pole counts",
-    "data": "holds on the data, under the stated assumption between lines",
-    "none": "no evidence",
+    "proved": "the count holds on the whole contour",
+    "declared": "the count holds on the whole contour, resting on pole counts that the file states",
+    "data": "the count rests on measured lines and holds under the stated assumption between them",
+    "none": "no evidence for a count",
 }
 
 
@@ -59,10 +59,10 @@ LIMIT_WORDS: dict[str, LimitWords] = {
     "gain_increase_db": LimitWords("gain increase", "dB"),
     "gain_decrease_db": LimitWords("gain decrease", "dB"),
     "phase_margin_deg": LimitWords("phase margin", "deg"),
+    "delay_margin_s": LimitWords("delay margin", "s"),
     "modulus_margin": LimitWords("modulus margin", ""),
     "sensitivity_peak_db": LimitWords("peak of |S|", "dB", ceiling=True),
     "complementary_peak_db": LimitWords("peak of |T|", "dB", ceiling=True),
-    "delay_margin_s": LimitWords("delay margin", "s"),
     "crossover_min": LimitWords("lowest crossover", "frequency"),
     "crossover_max": LimitWords("highest crossover", "frequency", ceiling=True),
 }
@@ -104,7 +104,7 @@ def as_declared(value: float) -> str:
 
 def signed(count: int) -> str:
     """A winding count with its sign; clockwise is positive."""
-    return f"{count:+d}" if count else "0"
+    return f"{count:+d}".replace("-", "−") if count else "0"
 
 
 def count_or_unknown(count: int | None) -> str:
