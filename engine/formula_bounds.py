@@ -130,7 +130,7 @@ def _infinite() -> FormulaError:
 def _power(base: Extent, exponent: Extent) -> Extent:
     if exponent.value is None:
         raise FormulaError(None, "an exponent depends on `s`, and exponents are constants", "exponent-not-constant")
-    if abs(exponent.value) > LARGEST_EXPONENT:
+    if not -LARGEST_EXPONENT <= exponent.value <= LARGEST_EXPONENT:
         sentence = f"an exponent is {float(exponent.value):.6g}, and exponents go up to {LARGEST_EXPONENT}"
         raise FormulaError(None, sentence, "exponent-too-large")
     whole = int(exponent.value) if exponent.value == int(exponent.value) else None
@@ -149,7 +149,7 @@ def _constant_power(base: _Constant, exponent: float | int) -> _Constant:
     if base < 0 and not isinstance(exponent, int):
         raise FormulaError(None, "a negative constant has a broken exponent, which is not real", "not-real")
     try:
-        value = base**exponent if isinstance(exponent, int) else float(base) ** exponent
+        value: _Constant = base**exponent if isinstance(exponent, int) else math.pow(base, exponent)
     except OverflowError:
         raise _infinite() from None
     return _finite(value, vanishes=base == 0)

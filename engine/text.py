@@ -7,10 +7,17 @@ from collections.abc import Iterable
 
 SHOWN_LENGTH = 60
 _COMPARED_NAMES = 2000
+_ESCAPED_BACKQUOTE = r"\x60"
 
 
 def printable(text: str) -> str:
-    """``text`` with every character that is not printable (controls, direction marks, ...) written as an escape."""
+    """``text`` with every character that could steer a terminal written as its backslash escape.
+
+    Escaped are control characters (C0, C1, DEL), direction overrides and other invisible format characters, lone
+    surrogates, and every separator but the plain space: all that Unicode calls not printable.
+    """
+    if text.isprintable():
+        return text
     return "".join(character if character.isprintable() else _escape(character) for character in text)
 
 
@@ -22,7 +29,7 @@ def one_line(text: str) -> str:
 def quoted(text: str, length: int = SHOWN_LENGTH) -> str:
     """``text`` in backquotes, printable, cut to ``length`` characters: for messages that repeat what a file says."""
     shortened = text if len(text) <= length else text[: length - 1] + "…"
-    return f"`{printable(shortened).replace('`', _escape('`'))}`"
+    return f"`{printable(shortened).replace('`', _ESCAPED_BACKQUOTE)}`"
 
 
 def listed(names: Iterable[str], last: str = "and") -> str:
@@ -43,7 +50,4 @@ def nearest_known(name: str, known: Iterable[str]) -> str:
 
 
 def _escape(character: str) -> str:
-    code = ord(character)
-    if code < 0x100:
-        return f"\\x{code:02x}"
-    return f"\\u{code:04x}" if code < 0x10000 else f"\\U{code:08x}"
+    return character.encode("unicode_escape").decode("ascii")
