@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from encircle.engine.result import LoopResult, Result
 from encircle.tui.loop_report import loop_lines, overview_lines
+from encircle.tui.margin_table import MISSED_MARK
 from encircle.tui.plain_text import Layout, Style
 from encircle.tui.wording import CAUTION, OUTCOME_WORDS, complex_pair, count_or_unknown, frequency, plural
 
@@ -24,7 +25,7 @@ def _heading(result: Result, layout: Layout) -> list[str]:
     word = OUTCOME_WORDS[result.result]
     hanging = len(word) + 2
     sentence = "\n".join(layout.wrapped(outcome_sentence(result), indent=hanging))[hanging:]
-    source = f"{result.file}, checked by {result.program}"
+    source = f"{result.file} (sha256 {result.sha256[:12]}…), checked by {result.program}"
     return [
         *(layout.paint(line, "title") for line in layout.wrapped(result.title or result.file)),
         *(layout.paint(line, "quiet") for line in layout.wrapped(source)),
@@ -72,10 +73,10 @@ def _hidden_poles(result: Result, layout: Layout) -> list[str]:
     for hidden in result.hidden_unstable_poles:
         place = f" at {complex_pair(hidden.pole)}" if hidden.pole is not None else ""
         sentence = (
-            f"!! Hidden: block {hidden.block} has an unstable pole{place} that no feedback moves. "
+            f"Hidden: block {hidden.block} has an unstable pole{place} that no feedback moves. "
             "The curves do not show it; the machine will."
         )
-        lines += [layout.paint(line, "bad") for line in layout.wrapped(sentence, hanging=3)]
+        lines += [layout.paint(line, "bad") for line in layout.wrapped(sentence, 4, mark=MISSED_MARK)]
     return lines
 
 

@@ -19,21 +19,28 @@ from encircle.tui.wording import (
 )
 
 MOST_LISTED = 12
-_INDENT = 3
+UNDECIDED_MARK = "??"
+_INDENT = 4
 
 _VERDICT_STYLE: dict[str, Style] = {"stable": "good", "unstable": "bad", "undecided": "doubt", "as_declared": "good"}
 
 
 def overview_lines(result: Result, layout: Layout) -> list[str]:
-    """One line per loop in closing order: verdict, P -> Z, N, evidence, limits."""
+    """One line per loop in closing order: verdict, P → Z, N, evidence, limits; a few lines where it is narrow."""
     header = ("", "", "loop", "verdict", "P → Z", "N", "evidence", "limits")
-    rows = [header, *(_overview_cells(number, loop) for number, loop in enumerate(result.loops, 1))]
-    lines = aligned([[layout.text(cell) for cell in row] for row in rows], right=frozenset({1, 5}), gap=2)
+    rows = [_overview_cells(number, loop) for number, loop in enumerate(result.loops, 1)]
+    lines = aligned([[layout.text(cell) for cell in row] for row in (header, *rows)], right=frozenset({1, 5}))
+    lead = layout.wrapped("Loops in closing order, the innermost first; unstable poles before and after each closes:")
+    if not layout.holds(lines):
+        return [*lead, *(line for row in rows for line in _overview_stacked(row, layout))]
     styles: list[Style | None] = ["quiet", *(_loop_style(loop) for loop in result.loops)]
-    return [
-        *layout.wrapped("Loops in closing order, the innermost first; unstable poles before and after each closes:"),
-        *(layout.paint(line, style) for line, style in zip(lines, styles, strict=True)),
-    ]
+    return [*lead, *(layout.paint(line, style) for line, style in zip(lines, styles, strict=True))]
+
+
+def _overview_stacked(row: tuple[str, ...], layout: Layout) -> list[str]:
+    mark, number, name, verdict, ladder, windings, evidence, limits = row
+    sentence = f"{number} {name}: {verdict}, P → Z {ladder}, N {windings}, {evidence}, limits: {limits}"
+    return layout.wrapped(sentence, _INDENT, _INDENT + 2, mark=mark)
 
 
 def _overview_cells(number: int, loop: LoopResult) -> tuple[str, ...]:
@@ -63,17 +70,24 @@ def _loop_style(loop: LoopResult) -> Style | None:
 
 def loop_lines(number: int, loop: LoopResult, frequency_unit: str, layout: Layout) -> list[str]:
     """All that is known of one loop."""
-    heading = f"{number}  {loop.name}"
-    place = f"cut at {loop.cut}, gain {as_declared(loop.gain)}"
     sentences = [_counts(loop), *_pole_owners(loop), *_evidence(loop), *_axis_poles(loop, frequency_unit)]
     return [
-        f"{layout.paint(layout.text(heading), 'title')}   {layout.text(place)}",
+        *_loop_heading(number, loop, layout),
         *(layout.paint(line, _VERDICT_STYLE[loop.verdict]) for line in layout.wrapped(_verdict(loop), _INDENT)),
         *_paragraphs(sentences, layout),
         *_undecided(loop, frequency_unit, layout),
         *_margins(loop, frequency_unit, layout),
         *_paragraphs([*_gain_ranges(loop), *_crossings(loop, frequency_unit)], layout),
     ]
+
+
+def _loop_heading(number: int, loop: LoopResult, layout: Layout) -> list[str]:
+    heading = layout.text(f"{number}  {loop.name}")
+    place = layout.text(f"cut at {loop.cut}, gain {as_declared(loop.gain)}")
+    if layout.holds([f"{heading}   {place}"]):
+        return [f"{layout.paint(heading, 'title')}   {place}"]
+    title = (layout.paint(line, "title") for line in layout.wrapped(heading, hanging=_INDENT))
+    return [*title, *layout.wrapped(place, _INDENT)]
 
 
 def _paragraphs(sentences: Iterable[str], layout: Layout) -> list[str]:
@@ -128,11 +142,12 @@ def _axis_poles(loop: LoopResult, unit: str) -> list[str]:
 
 def _undecided(loop: LoopResult, unit: str, layout: Layout) -> list[str]:
     sentences = [
-        f"?? From {frequency(stretch.lower, unit)} to {frequency(stretch.upper, unit)}: {stretch.why}"
+        f"From {frequency(stretch.lower, unit)} to {frequency(stretch.upper, unit)}: {stretch.why}"
         for stretch in loop.undecided[:MOST_LISTED]
     ]
     sentences += _more(loop.undecided, "stretches")
-    return [layout.paint(line, "doubt") for line in _paragraphs(sentences, layout)]
+    lines = [line for text in sentences for line in layout.wrapped(text, _INDENT, mark=UNDECIDED_MARK)]
+    return [layout.paint(line, "doubt") for line in lines]
 
 
 def _margins(loop: LoopResult, unit: str, layout: Layout) -> list[str]:

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from encircle.engine.result import LimitFinding, LoopResult, Margins
-from encircle.tui.plain_text import Layout, Style, aligned, column_widths
+from encircle.tui.plain_text import Layout, Style, aligned
 from encircle.tui.wording import (
     LIMIT_WORDS,
     Direction,
@@ -22,7 +22,7 @@ from encircle.tui.wording import (
 
 MISSED_MARK = "!!"
 NO_LIMIT = "no finite limit"
-_INDENT = 3
+_INDENT = 4
 
 _STATUS_STYLE: dict[bool | None, Style] = {True: "good", False: "bad", None: "doubt"}
 
@@ -48,10 +48,10 @@ class MarginRow:
 def margin_lines(loop: LoopResult, frequency_unit: str, layout: Layout) -> list[str]:
     """The table, or one line per entry and limit where the columns do not fit."""
     rows = margin_rows(loop, frequency_unit)
-    cells = [_cells(row, frequency_unit, layout) for row in rows]
-    if cells and sum(column_widths(cells)) + 2 * 4 > layout.width:
+    lines = aligned([_cells(row, frequency_unit, layout) for row in rows])
+    if not layout.holds(lines):
         return [line for row in rows for line in _stacked(row, frequency_unit, layout)]
-    return [layout.paint(line, _style(row)) for row, line in zip(rows, aligned(cells), strict=True)]
+    return [layout.paint(line, _style(row)) for row, line in zip(rows, lines, strict=True)]
 
 
 def margin_rows(loop: LoopResult, frequency_unit: str) -> list[MarginRow]:
@@ -137,10 +137,9 @@ def _cells(row: MarginRow, unit: str, layout: Layout) -> tuple[str, ...]:
 def _stacked(row: MarginRow, unit: str, layout: Layout) -> list[str]:
     quantity, finding = row.quantity, row.finding
     words = (LIMIT_WORDS[row.name].quantity, quantity.value, quantity.addition, quantity.place)
-    found = f"{_mark(row).strip()} {' '.join(word for word in words if word)}"
+    found = " ".join(word for word in words if word)
     limit = f"; {limit_required(finding, unit)}: {limit_status(finding)}" if finding else ""
-    indent = 0 if row.finding is not None and row.finding.met is False else _INDENT
-    lines = layout.wrapped(found + limit, indent=indent, hanging=_INDENT + 2)
+    lines = layout.wrapped(found + limit, _INDENT, _INDENT + 2, mark=_mark(row))
     return [layout.paint(line, _style(row)) for line in lines]
 
 

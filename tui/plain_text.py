@@ -34,11 +34,15 @@ class Layout:
         """``text`` in colour, where colour is wanted; it must say the same without."""
         return f"\x1b[{_SGR[style]}m{text}\x1b[0m" if self.colour and style and text else text
 
-    def wrapped(self, raw: str, indent: int = 0, hanging: int | None = None) -> list[str]:
-        """``raw`` broken into lines; ``hanging`` is the indentation of the second and later lines."""
-        first, rest = " " * indent, " " * (indent if hanging is None else hanging)
+    def wrapped(self, raw: str, indent: int = 0, hanging: int | None = None, mark: str = "") -> list[str]:
+        """``raw`` broken into lines; ``hanging`` indents the second and later ones, ``mark`` stands in the margin."""
+        first, rest = mark.ljust(indent), " " * (indent if hanging is None else hanging)
         lines = _broken(self.text(raw), max(self.width - len(first), 20), max(self.width - len(rest), 20))
         return [(rest if number else first) + line for number, line in enumerate(lines)]
+
+    def holds(self, lines: Iterable[str]) -> bool:
+        """Whether no line is too wide."""
+        return all(display_width(line) <= self.width for line in lines)
 
     def rule(self) -> str:
         """A line across."""
@@ -102,13 +106,8 @@ def padded(text: str, width: int, right: bool = False) -> str:
     return blanks + text if right else text + blanks
 
 
-def column_widths(rows: Iterable[Sequence[str]]) -> list[int]:
-    """The cells that each column needs."""
-    return [max(display_width(cell) for cell in column) for column in zip(*rows, strict=True)]
-
-
 def aligned(rows: Sequence[Sequence[str]], right: frozenset[int] = frozenset(), gap: int = 2) -> list[str]:
     """Rows of cells as lines of columns; columns numbered in ``right`` are flush right."""
-    widths = column_widths(rows) if rows else []
+    widths = [max(display_width(cell) for cell in column) for column in zip(*rows, strict=True)]
     lines = ((" " * gap).join(padded(cell, widths[k], k in right) for k, cell in enumerate(cells)) for cells in rows)
     return [line.rstrip() for line in lines]
