@@ -167,5 +167,11 @@ TROUBLED = replace(
     unstable_poles_all_closed=3,
     hidden_unstable_poles=(HiddenPole("vessel", 0.0015 + 0j), HiddenPole("fan", 1 + 2j), HiddenPole("bending", None)),
     measured=(MeasuredFile("bending", "flexible.csv", "cd" * 32, 812, 2.0, 3000.0),),
-    warnings=(Problem("equal_poles", "blocks.vessel", "the pole at 0.0015 rad/s stands in `fan` too"),),
+    warnings=(
+        Problem(
+            "equal-poles",
+            "blocks.vessel",
+            "rewinder.toml, [blocks.vessel]: the pole at 0.0015 rad/s stands in `fan` too",
+        ),
+    ),
 )

@@ -169,8 +169,8 @@ def test_long_lists_keep_the_entries_nearest_the_critical_point_and_say_so() -> 
         item["unstable_poles"] for item in loop["gain_ranges"]
     )
     assert [(item["code"], item["where"]) for item in written["warnings"]] == [
-        ("list_shortened", "loops.current.real_axis_crossings"),
-        ("list_shortened", "loops.current.gain_ranges"),
+        ("list-shortened", "loops.current.real_axis_crossings"),
+        ("list-shortened", "loops.current.gain_ranges"),
     ]
     assert "1501" in written["warnings"][0]["message"]
 

@@ -92,5 +92,5 @@ def _measured_files(result: Result, layout: Layout) -> list[str]:
 def _warnings(result: Result, layout: Layout) -> list[str]:
     lines: list[str] = []
     for warning in result.warnings:
-        lines += [layout.paint(line, "doubt") for line in layout.wrapped(f"Warning: {warning}", hanging=3)]
+        lines += [layout.paint(line, "doubt") for line in layout.wrapped(f"Warning: {warning.message}", hanging=3)]
     return lines

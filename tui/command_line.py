@@ -14,7 +14,6 @@ from encircle.tui.arguments import HELP, Arguments, UsageError, parse_arguments
 from encircle.tui.output import OutputError, complain, show
 
 if TYPE_CHECKING:
-    from encircle.engine import Project
     from encircle.engine.errors import Problem
     from encircle.engine.result import Result
 
@@ -28,15 +27,23 @@ def main(argv: Sequence[str] | None = None) -> int:
     """Run the program on ``argv`` (default: the process's own arguments) and return its exit status."""
     words = sys.argv[1:] if argv is None else list(argv)
     try:
-        return _run(words)
+        return _run_reporting_faults(words)
     except KeyboardInterrupt:
-        complain("interrupted")
+        complain("encircle: interrupted")
         return INTERRUPTED
     except OutputError as error:
-        complain(str(error))
+        complain(f"encircle: {error}")
         return UNUSABLE_INPUT
-    except Exception as error:  # the last line of defence: Python's own status for a fault, 1, would read as `fail`
-        complain(_fault(error))
+
+
+def _run_reporting_faults(words: Sequence[str]) -> int:
+    """A fault of the program becomes a sentence and a status of its own: Python's, 1, would read as `fail`."""
+    try:
+        return _run(words)
+    except OutputError:
+        raise
+    except Exception as error:
+        _refuse("internal-fault", _fault(error), "--json" in words)
         return INTERNAL_FAULT
 
 
@@ -59,10 +66,10 @@ def _version() -> str:
 
 def _check(arguments: Arguments) -> int:
     """Print the report, or the errors; the exit status says the result."""
-    from encircle.engine.errors import ProjectError
+    from encircle.engine import ProjectError, open_project
 
     try:
-        project = _opened(arguments.file)
+        project = open_project(arguments.file)
         _require_loops(arguments.loops, project.loop_names)
         result = project.check(arguments.loops or None)
     except ProjectError as error:
@@ -84,13 +91,13 @@ def _result_text(result: Result, as_json: bool) -> str:
 
 def _screen(arguments: Arguments) -> int:
     """Open the screen, where there is a terminal that can carry it."""
-    from encircle.engine.errors import ProjectError
+    from encircle.engine import ProjectError, open_project
 
     obstacle = _terminal_obstacle()
     if obstacle:
-        return _refuse("no_terminal", f"{obstacle}; for a printed report: encircle check {arguments.file}", False)
+        return _refuse("no-terminal", f"{obstacle}; for a printed report: encircle check {arguments.file}", False)
     try:
-        project = _opened(arguments.file)
+        project = open_project(arguments.file)
     except ProjectError as error:
         return _report_problems(error.problems, False)
     from encircle.tui.app import run_screen
@@ -109,42 +116,30 @@ def _terminal_obstacle() -> str:
     return ""
 
 
-def _opened(file: str) -> Project:
-    """The project of a file; every reason why it cannot be read is a ``ProjectError``."""
-    from encircle.engine import ProjectError, open_project
-    from encircle.engine.errors import Problem
-
-    try:
-        return open_project(file)
-    except OSError as error:
-        reason = (error.strerror or str(error)).lower()
-        raise ProjectError(Problem("unreadable", "", f"{error.filename or file} cannot be read: {reason}")) from error
-
-
 def _require_loops(wanted: Iterable[str], known: Sequence[str]) -> None:
     """Every name given with --loop must be a loop of the project."""
     from encircle.engine.errors import Problem, ProjectError
     from encircle.engine.text import listed, nearest_known, quoted
 
     unknown = [
-        Problem("unknown_loop", "--loop", f"no loop is named {quoted(name)}{nearest_known(name, known)}; "
-                f"the loops are {listed(known)}")
+        f"encircle: no loop is named {quoted(name)}{nearest_known(name, known)}; the loops are {listed(known)}"
         for name in wanted
         if name not in known
-    ]  # fmt: skip
+    ]
     if unknown:
-        raise ProjectError(*unknown)
+        raise ProjectError(*(Problem("unknown-loop", "--loop", message) for message in unknown))
 
 
 def _refuse(code: str, message: str, as_json: bool) -> int:
+    """Report what is no fault of the project file, under the program's name."""
     from encircle.engine.errors import Problem
 
-    return _report_problems([Problem(code, "", message)], as_json)
+    return _report_problems([Problem(code, "", f"encircle: {message}")], as_json)
 
 
 def _report_problems(problems: Sequence[Problem], as_json: bool) -> int:
     """One message a line on standard error, and the errors object on standard output when JSON was asked for."""
-    complain(*(str(problem) for problem in problems))
+    complain(*(problem.message for problem in problems))
     if as_json:
         from encircle.tui.result_json import errors_json
 

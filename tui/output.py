@@ -39,7 +39,7 @@ def complain(*messages: str) -> None:
         return
     try:
         for message in messages:
-            stream.write(_encodable(f"encircle: {one_line(message)}\n", stream))
+            stream.write(_encodable(one_line(message) + "\n", stream))
         stream.flush()
     except OSError:
         _silence(stream)  # nobody is left to be told

@@ -27,6 +27,7 @@ from encircle.engine.result import (
     Result,
     UndecidedStretch,
 )
+from encircle.engine.text import quoted
 
 FORMAT = 1
 LONGEST_LIST = 1000
@@ -248,9 +249,9 @@ def _shortened_lists(loop: LoopResult) -> list[Problem]:
     )
     return [
         Problem(
-            "list_shortened",
+            "list-shortened",
             f"loops.{loop.name}.{key}",
-            f"{len(items)} entries were found; the result lists {LONGEST_LIST}: {kept}",
+            f"loop {quoted(loop.name)}, {key}: of {len(items)} entries {LONGEST_LIST} are listed, {kept}",
         )
         for key, items, kept in lists
         if len(items) > LONGEST_LIST
