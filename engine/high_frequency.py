@@ -1,0 +1,165 @@
+"""Loop determinants on |s| >= R, Re s >= 0: the arc at infinity closed by one disc.
+
+Every product of factors is c s^m exp(-T s) (1 + Disc(rho)) there. The terms of the highest order without dead time, summed
+exactly, make the lead D_0 s^m; where |D_0| exceeds the sum of all the rest, the determinant has no zero on |s| >= R and
+ends in a disc round D_0 s^m that excludes 0. Dead times enter as |exp(-T s)| <= 1, so delayed terms of the same order must
+sum to less than |D_0|: the condition of strong stability of neutral systems (J. K. Hale, S. M. Verduyn Lunel, IMA J. Math.
+Control Inf. 19 (2002) 5-23; cited from memory).
+"""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from enum import Enum
+from fractions import Fraction
+from typing import NamedTuple
+
+import numpy as np
+
+from encircle.engine.coprime_factors import Factor, Powers
+from encircle.engine.encirclement import Ending
+from encircle.engine.factor_models import FactorModel
+from encircle.engine.polynomial import Polynomial
+from encircle.engine.result import FloatArray
+from encircle.engine.rounding import UNIT
+from encircle.engine.sections import sections
+
+DOUBLINGS = 120
+BEYOND = 1e300  # stands for the logarithm of infinity: finite, so that 0 times it is 0
+
+
+class FarCause(Enum):
+    """Why nothing is proved on the arc at infinity."""
+
+    NEUTRAL = "delayed gain reaches 1"
+    ILL_POSED = "lead vanishes"
+    UNKNOWN = "unknown growth"
+
+
+class FarProduct(NamedTuple):
+    """One product of the sum: factors with exponents, dead time, exact constant without the factors at the cuts."""
+
+    powers: Powers
+    delay: Fraction
+    coefficient: Fraction
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Asymptote:
+    """lead s^order (1 + Disc(rho)) exp(-delay s), rho (radii,); for lead 0 the size is within rho |s|^order."""
+
+    lead: Fraction
+    order: Fraction
+    rho: FloatArray
+    delay: Fraction
+
+
+class FarField:
+    """A sum of products on |s| >= R, R = highest * 2^k; built once, asked with changing factors at the cuts."""
+
+    def __init__(self, products: Sequence[FarProduct], models: Mapping[Factor, FactorModel], highest: float) -> None:
+        self.radii = highest * 2.0 ** np.arange(DOUBLINGS)
+        growth = _polynomial_growth(products, self.radii)
+        self._asymptotes = [
+            _asymptote(product, models, self.radii, growth[i]) for i, product in enumerate(products)
+        ]
+
+    def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
+        """The ending of sum_i factors[i] * product_i on the smallest radius that serves, or why there is none."""
+        sums: dict[tuple[Fraction, Fraction], Fraction] = defaultdict(Fraction)
+        for term, factor in zip(self._asymptotes, factors, strict=True):
+            sums[term.order, term.delay] += term.lead * factor
+        prompt = {order: total for (order, delay), total in sums.items() if delay == 0}
+        orders = [order for order, total in prompt.items() if total != 0]
+        if not orders:
+            return FarCause.ILL_POSED
+        top = max(orders)
+        if any(term.order > top and term.lead != 0 and term.delay == 0 for term in self._asymptotes):
+            return FarCause.ILL_POSED  # the highest powers cancel exactly
+        delayed = [(order, abs(total)) for (order, delay), total in sums.items() if delay > 0 and total != 0]
+        neutral = sum((size for order, size in delayed if order == top), Fraction(0)) / abs(prompt[top])
+        if neutral >= 1 or any(order > top for order, _ in delayed):
+            return FarCause.NEUTRAL
+        rest = self._rest(factors, top, prompt[top]) + _float_upper(neutral)
+        good = np.flatnonzero(rest < 0.9) if neutral < 0.8 else np.flatnonzero(rest < 1.0 - 1e-12)
+        if not len(good):
+            return FarCause.UNKNOWN
+        return Ending(float(self.radii[good[0]]), 1.0 if prompt[top] > 0 else -1.0, float(top))
+
+    def _rest(self, factors: Sequence[Fraction], top: Fraction, lead: Fraction) -> FloatArray:
+        """All but the lead and the limits of delayed terms, relative to the lead, for each radius."""
+        rest = np.zeros(len(self.radii))
+        with np.errstate(all="ignore"):
+            for term, factor in zip(self._asymptotes, factors, strict=True):
+                size = _float_upper(abs((term.lead or 1) * factor / lead))
+                fall = self.radii ** float(term.order - top)
+                loose = term.rho if term.lead == 0 or term.order == top else 1.0 + term.rho
+                if term.lead == 0 and term.order > top:
+                    return np.full(len(self.radii), np.inf)
+                rest += size * fall * loose
+        return rest * (1.0 + 64.0 * UNIT * (len(factors) + 4))
+
+
+def _polynomial_growth(products: Sequence[FarProduct], radii: FloatArray) -> FloatArray:
+    """(products, radii): 1 + the relative disc of each product of polynomials, by logarithms of its sections' discs."""
+    polynomials = list(dict.fromkeys(f for p in products for f in p.powers if isinstance(f, Polynomial)))
+    if not polynomials:
+        return np.ones((len(products), len(radii)))
+    up, down = [], []
+    with np.errstate(all="ignore"):
+        for polynomial in polynomials:
+            found = sections(polynomial)
+            spread = np.array([_relative_spread(row, radii) for row in found.rows])
+            up.append(np.log1p(spread).sum(axis=0) + np.log1p(found.delta))
+            shrink = -np.log1p(-np.where(spread < 1.0, spread, 1.0)).sum(axis=0) - np.log1p(-found.delta)
+            down.append(np.minimum(shrink, BEYOND))
+        powers = np.array([[p.powers.get(f, 0) for f in polynomials] for p in products], dtype=float)
+        logarithm = np.maximum(powers, 0.0) @ np.array(up) + np.maximum(-powers, 0.0) @ np.array(down)
+        slack = 64.0 * UNIT * (1.0 + logarithm + np.abs(powers).sum(axis=1)[:, None])
+        growth: FloatArray = np.exp(logarithm) * (1.0 + slack)
+    return growth
+
+
+def _asymptote(
+    product: FarProduct, models: Mapping[Factor, FactorModel], radii: FloatArray, growth: FloatArray
+) -> _Asymptote:
+    """Join the other factors to the polynomials; relative discs multiply as 1 + rho."""
+    lead, order = product.coefficient, Fraction(0)
+    bound = np.ones(len(radii))
+    only_bounded = False
+    for factor, power in product.powers.items():
+        if isinstance(factor, Polynomial):
+            order += factor.degree * power
+            continue
+        far = models[factor].far(radii)
+        order += far.order * power
+        if far.lead == 0.0:
+            only_bounded = True
+            bound = bound * far.spread**power
+        else:
+            lead *= Fraction(far.lead) ** power
+            growth = growth * (1.0 + far.spread / abs(far.lead)) ** power
+    if only_bounded:
+        size = _float_upper(abs(lead)) * growth * bound * (1.0 + 64.0 * UNIT)
+        return _Asymptote(Fraction(0), order, size, product.delay)
+    return _Asymptote(lead, order, (growth - 1.0) * (1.0 + 8.0 * UNIT) + 8.0 * UNIT, product.delay)
+
+
+def _relative_spread(row: FloatArray, radii: FloatArray) -> FloatArray:
+    """|q(s)/(lead s^n) - 1| <= this on |s| >= R."""
+    a2, a1, a0 = (abs(float(value)) for value in row)
+    if a2:
+        return (a1 + a0 / radii) / radii / a2 * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
+    if a1:
+        return a0 / a1 / radii * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
+    return np.full(len(radii), 2.0 * UNIT)
+
+
+def _float_upper(value: Fraction) -> float:
+    """A double not below ``value`` >= 0; inf where it is too large."""
+    try:
+        return float(value) * (1.0 + 4.0 * UNIT)
+    except OverflowError:
+        return float("inf")
