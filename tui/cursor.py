@@ -1,0 +1,114 @@
+"""The frequency cursor: where it stands on a curve, how it steps, and its readout."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+
+import numpy as np
+
+from encircle.engine.result import LoopCurve, LoopResult, Margins
+from encircle.tui.picture import Picture
+from encircle.tui.readout import nearest_index, readout
+from encircle.tui.sheet import Ink, Piece, Row, Sheet
+from encircle.tui.view import View
+from encircle.tui.wording import as_declared, frequency, rounded
+
+FINE_RATIO = 10 ** (1 / 60)
+FAR_STEPS = 10
+
+
+def cursor_index(picture: Picture, view: View) -> int:
+    """The point of the curve nearest to the cursor; at first the tightest gain crossover or the point nearest -1."""
+    wanted = view.cursor if view.cursor is not None else _first_place(picture)
+    return nearest_index(picture.curve, wanted)
+
+
+def _first_place(picture: Picture) -> float:
+    margins = picture.loop.margins
+    if margins is not None and margins.phase is not None and margins.phase.frequency:
+        return margins.phase.frequency
+    return float(picture.curve.frequency[int(np.argmax(np.abs(picture.curve.S)))])
+
+
+def stepped(curve: LoopCurve, index: int, steps: int) -> float:
+    """The frequency ``steps`` steps of 1/60 decade away, but at least one point of the curve."""
+    wanted = float(curve.frequency[index]) * FINE_RATIO**steps
+    target = nearest_index(curve, wanted)
+    if target == index:
+        target += 1 if steps > 0 else -1
+    return float(curve.frequency[min(max(target, 0), len(curve.frequency) - 1)])
+
+
+def marked_frequencies(loop: LoopResult) -> tuple[float, ...]:
+    """Frequencies worth a look, ascending: crossings of the real axis, crossovers, margins and peaks."""
+    crossings = [crossing.frequency for crossing in loop.real_axis_crossings]
+    found = [*crossings, *(_of_margins(loop.margins) if loop.margins else ())]
+    return tuple(sorted({value for value in found if value}))
+
+
+def _of_margins(margins: Margins) -> list[float | None]:
+    places = (
+        margins.gain_increase,
+        margins.gain_decrease,
+        margins.phase,
+        margins.delay,
+        margins.modulus,
+        margins.sensitivity_peak,
+        margins.complementary_peak,
+    )
+    return [*margins.gain_crossovers, *(place.frequency for place in places if place is not None)]
+
+
+def next_mark(picture: Picture, index: int, direction: int) -> float | None:
+    """The next marked frequency up or down that falls on another point of the curve; ``None`` at the end."""
+    places = {nearest_index(picture.curve, mark): mark for mark in marked_frequencies(picture.loop)}
+    beyond = [place for place in places if (place - index) * direction > 0]
+    return places[min(beyond, key=lambda place: abs(place - index))] if beyond else None
+
+
+def readout_row(picture: Picture, view: View, width: int, *, ascii_only: bool = False) -> Row:
+    """The values at the cursor, in one row; at the right the gain of the chosen loop."""
+    index = cursor_index(picture, view)
+    point = readout(picture.curve, index)
+    sensitivity, complementary = abs(picture.curve.S[index]), abs(picture.curve.T[index])
+    values = (
+        ("", frequency(point.frequency, picture.now.frequency_unit)),
+        ("|L|", _decibels(point.magnitude_db)),
+        ("arg L", f"{point.phase_degrees:.1f}°"),
+        ("|1+L|", rounded(point.distance)),
+        ("|S|", _decibels(_in_decibels(sensitivity))),
+        ("|T|", _decibels(_in_decibels(complementary))),
+    )
+    sheet = Sheet(width, ascii_only=ascii_only)
+    gain = _gain(picture)
+    room = width - sum(len(piece if isinstance(piece, str) else piece[0]) for piece in gain)
+    sheet.split_row(_that_fit(values, room), gain)
+    return sheet.rows[0]
+
+
+def _that_fit(values: Iterable[tuple[str, str]], room: int) -> list[Piece]:
+    """Names and values as far as whole ones fit, the most important first."""
+    pieces: list[Piece] = [("● ", Ink.STRONG)]
+    used = 2
+    for name, value in values:
+        used += len(name) + len(value) + (3 if name else 2)
+        if used > room:
+            break
+        pieces += [(f"{name} " if name else "", Ink.QUIET), (value, Ink.STRONG), "  "]
+    return pieces
+
+
+def _gain(picture: Picture) -> list[Piece]:
+    now, filed = picture.loop, picture.loop_filed
+    if now.gain == filed.gain:
+        return [("gain ", Ink.QUIET), (as_declared(now.gain), Ink.STRONG), " "]
+    return [(f"gain {rounded(now.gain)}, file {as_declared(filed.gain)} ", Ink.TRIAL)]
+
+
+def _decibels(db: float) -> str:
+    return f"{db:+.2f} dB" if math.isfinite(db) else "−∞ dB"
+
+
+def _in_decibels(magnitude: float) -> float:
+    return 20 * math.log10(magnitude) if magnitude > 0 else -math.inf
