@@ -43,11 +43,10 @@ class CellGrid:
 
     def rows(self, *, ascii_only: bool) -> tuple[Row, ...]:
         """Each row as runs (text, role)."""
-        table = plain_table() if ascii_only else {}
-        return tuple(
-            tuple(_runs("".join(characters).translate(table), roles))
-            for characters, roles in zip(self._characters, self._roles, strict=True)
-        )
+        lines = ["".join(characters) for characters in self._characters]
+        if ascii_only:
+            lines = [line.translate(plain_table()) for line in lines]
+        return tuple(tuple(_runs(line, roles)) for line, roles in zip(lines, self._roles, strict=True))
 
 
 def _runs(text: str, roles: list[Role]) -> list[tuple[str, Role]]:

@@ -38,9 +38,10 @@ class Canvas:
 
     def cell(self, x: float, y: float, window: Window) -> tuple[int, int]:
         """Column from the left and row from the bottom of the cell at a point inside the window."""
-        across, upward = window.fractions(x, y)
-        column = int(np.rint(across * (self.dots_across - 1))) // DOTS_ACROSS
-        return column, int(np.rint(upward * (self.dots_upward - 1))) // DOTS_UPWARD
+        across = (x - window.left) / (window.right - window.left)
+        upward = (y - window.bottom) / (window.top - window.bottom)
+        column = round(across * (self.dots_across - 1)) // DOTS_ACROSS
+        return column, round(upward * (self.dots_upward - 1)) // DOTS_UPWARD
 
 
 def line_dots(x: FloatArray, y: FloatArray, window: Window, canvas: Canvas) -> IntArray:
@@ -53,7 +54,7 @@ def line_dots(x: FloatArray, y: FloatArray, window: Window, canvas: Canvas) -> I
     _, first = np.unique(key, return_index=True)
     first.sort()
     stride = 1 + first.size // MOST_DOTS
-    return dots[first[::stride]]
+    return np.asarray(dots[first[::stride]])
 
 
 def _passed(segments: Segments, canvas: Canvas) -> IntArray:
@@ -87,4 +88,4 @@ def _without_corners(dots: IntArray) -> IntArray:
     # Of corners in a row every second one goes, or the line would tear.
     place = np.arange(len(dots))
     run_start = np.maximum.accumulate(np.where(corner, 0, place + 1))
-    return dots[~(corner & ((place - run_start) % 2 == 0))]
+    return np.asarray(dots[~(corner & ((place - run_start) % 2 == 0))])

@@ -17,8 +17,16 @@ from encircle.tui.ticks import Tick
 
 __all__ = ["Caption", "Curve", "Drawing", "Frame", "Mark", "Role", "Row", "Upright", "draw"]
 
-# Roles that give way altogether: their dots are left out of a cell that shows anything else.
-GIVING_WAY = (Role.GRID, Role.AXIS)
+# In a cell that two curves share, the dots of both are shown only if their roles stand in the same group; else those of
+# the lower role are left out, so that what matters keeps a clear outline.
+GROUPS = (
+    {Role.GRID, Role.AXIS},
+    {Role.UNIT_CIRCLE, Role.LIMIT, Role.FORBIDDEN},
+    {Role.BAND},
+    {Role.CURVE_BEFORE},
+    {Role.MIRROR, Role.SENSITIVITY, Role.COMPLEMENTARY, Role.CURVE},
+)
+GROUP = np.array([next((number for number, group in enumerate(GROUPS) if role in group), -1) for role in BY_PRIORITY])
 # The middle line of a braille cell at gaps of 1, 2 and 3 dots, for samples beside captions.
 SAMPLES = {1: "⠒⠒", 2: "⠂⠂", 3: "⠂⠐", 4: "⠂ "}
 
@@ -84,7 +92,10 @@ class Frame:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Drawing:
-    """All that a plot shows. Later curves and marks do not hide earlier ones: roles decide (see ``Role``)."""
+    """All that a plot shows; where things meet, roles decide what is seen (see ``Role``).
+
+    ``x_unit`` stands at the right end of the foot. ``lattice``: a point wherever two ticks meet.
+    """
 
     frame: Frame
     window: Window
@@ -95,6 +106,7 @@ class Drawing:
     y_ticks: tuple[Tick, ...] = ()
     captions: tuple[Caption, ...] = ()
     x_unit: str = ""
+    lattice: bool = True
 
 
 def draw(*drawings: Drawing, ascii_only: bool = False) -> tuple[Row, ...]:
@@ -128,7 +140,7 @@ class _Picture:
         return plain_text(text) if self.ascii_only else text
 
     def _cell(self, x: float, y: float) -> tuple[int, int]:
-        """Row and column of the grid at a point of the window."""
+        """Row and column of the grid at a point, which must lie in the window."""
         column, row = self.canvas.cell(x, y, self.drawing.window)
         return self.canvas.rows - 1 - row, self.frame.gutter + column
 
@@ -145,7 +157,7 @@ class _Picture:
             return
         left, right = self.frame.gutter + 1, self.frame.width - length - 1
         corners = [(row, column) for row in (0, self.canvas.rows - 1) for column in (right, left)]
-        row, column = min(corners, key=lambda corner: self.grid.filled(*corner, length))
+        row, column = min(corners, key=lambda corner: self.grid.filled(corner[0], corner[1], length))
         for text, role in runs:
             self.grid.write(row, column, text, role)
             column += len(text)
@@ -157,11 +169,13 @@ class _Picture:
 
     def _put_lattice(self) -> None:
         """A point wherever two ticks meet and nothing else stands."""
-        window = self.drawing.window
-        for x_tick in self.drawing.x_ticks:
-            for y_tick in self.drawing.y_ticks:
-                if window.contains(x_tick.position, y_tick.position):
-                    self.grid.put_free(*self._cell(x_tick.position, y_tick.position), Glyph.LATTICE, Role.GRID)
+        if not self.drawing.lattice:
+            return
+        columns = [self._cell(tick.position, self.drawing.window.bottom)[1] for tick in self.drawing.x_ticks]
+        for tick in self.drawing.y_ticks:
+            row, _ = self._cell(self.drawing.window.left, tick.position)
+            for column in columns:
+                self.grid.put_free(row, column, Glyph.LATTICE, Role.GRID)
 
     def _put_uprights(self) -> None:
         for upright in self.drawing.uprights:
@@ -196,11 +210,11 @@ class _Picture:
         return inside and self.grid.filled(row, column, length) == 0
 
     def _put_labels(self) -> None:
-        window = self.drawing.window
-        if self.frame.gutter:
-            for tick in self.drawing.y_ticks:
-                row, _ = self._cell(window.left, tick.position)
-                text = self._spelled(tick.label)[: self.frame.gutter - 1]
+        """In the gutter, but for labels wider than it, and in the foot."""
+        for tick in self.drawing.y_ticks:
+            text = self._spelled(tick.label)
+            if len(text) < self.frame.gutter:
+                row, _ = self._cell(self.drawing.window.left, tick.position)
                 self.grid.write(row, self.frame.gutter - 1 - len(text), text, Role.LABEL)
         if self.frame.foot:
             self._put_foot()
@@ -228,9 +242,9 @@ def _layers(drawing: Drawing, canvas: Canvas) -> tuple[Layer, ...]:
     cell = dots[:, 0] // DOTS_ACROSS * canvas.rows + dots[:, 1] // DOTS_UPWARD
     owner = np.zeros(canvas.columns * canvas.rows, dtype=np.intp)
     np.maximum.at(owner, cell, rank)
-    shown = (rank == owner[cell]) | ~np.isin(rank, [PRIORITY[role] for role in GIVING_WAY])
+    shown = GROUP[rank] == GROUP[owner[cell]]
     return _by_owner(dots[shown], owner[cell][shown])
 
 
 def _by_owner(dots: IntArray, owner: IntArray) -> tuple[Layer, ...]:
-    return tuple(Layer.of(int(number), np.unique(dots[owner == number], axis=0)) for number in np.unique(owner))
+    return tuple(Layer.of(int(number), dots[owner == number]) for number in np.unique(owner))

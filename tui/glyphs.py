@@ -6,6 +6,7 @@ from enum import StrEnum
 from functools import cache
 
 import numpy as np
+from numpy.typing import NDArray
 
 BRAILLE = 0x2800
 # Bit of each dot of a braille character (Unicode chapter "Braille Patterns"), rows from the top, left and right.
@@ -24,7 +25,7 @@ class Glyph(StrEnum):
     LEFT = "◂"
     DOWN = "▾"
     LATTICE = "·"
-    UPRIGHT = "│"
+    UPRIGHT = "┊"
 
 
 PLAIN_GLYPHS = {
@@ -40,7 +41,7 @@ PLAIN_GLYPHS = {
     Glyph.UPRIGHT: "|",
 }
 
-PLAIN_WORDS = {"∞": "inf", "°": " deg", "−": "-"}
+PLAIN_WORDS = {"∞": "inf", "°": "deg", "−": "-"}
 
 # The ink of plain characters on the 2 by 4 dots of a cell, rows from the top.
 PLAIN_INK = {
@@ -79,13 +80,13 @@ def plain_table() -> dict[int, str]:
     return table
 
 
-def _braille_dots() -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:
+def _braille_dots() -> NDArray[np.float64]:
     """The dots (256, 8) of every braille pattern, row by row from the top."""
     bits = np.array(BRAILLE_BITS).ravel()
-    return ((np.arange(256)[:, None] & bits) != 0).astype(float)
+    return np.asarray((np.arange(256)[:, None] & bits) != 0, dtype=float)
 
 
-def _ink_directions() -> np.ndarray[tuple[int, int], np.dtype[np.float64]]:
+def _ink_directions() -> NDArray[np.float64]:
     """The ink of each plain character as a unit vector: the largest projection is the best likeness."""
     ink = np.array([[dot == "#" for row in rows for dot in row] for rows in PLAIN_INK.values()], dtype=float)
-    return ink / np.linalg.norm(ink, axis=1, keepdims=True)
+    return np.asarray(ink / np.linalg.norm(ink, axis=1, keepdims=True))

@@ -37,7 +37,7 @@ def fold(z: ComplexArray) -> ComplexArray:
     """Points of the plane in the disc; a number without a finite absolute value lands on the rim or is no number."""
     with np.errstate(over="ignore", invalid="ignore"):
         size = np.abs(z)
-        return np.where(size < 1e300, z / (1 + size), np.exp(1j * np.angle(z)))
+        return np.asarray(np.where(size < 1e300, z / (1 + size), np.exp(1j * np.angle(z))))
 
 
 def _limit(value: complex | None) -> ComplexArray:
@@ -59,4 +59,4 @@ def _frequency(arc: Arc) -> float:
 
 def _on_rim(arc: Arc) -> ComplexArray:
     steps = 2 + int(abs(arc.end_angle - arc.start_angle) / ARC_STEP)
-    return np.exp(1j * np.linspace(arc.start_angle, arc.end_angle, steps))
+    return np.asarray(np.exp(1j * np.linspace(arc.start_angle, arc.end_angle, steps)))

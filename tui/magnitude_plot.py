@@ -137,7 +137,7 @@ class _Scene:
         return self._drawing(
             frame,
             Window(*self._band(), lower, upper),
-            [*(self._level(turn, Role.UNIT_CIRCLE) for turn in _negative_real(lower, upper)), *(t.line() for t in traces)],
+            [*self._phase_levels(lower, upper), *(trace.line() for trace in traces)],
             (Caption("phase °", Role.CURVE),),
             self._marks(values),
             degree_ticks(lower, upper, _tick_count(frame)),
@@ -191,6 +191,11 @@ class _Scene:
         )
         return [self._level(value, role) for value, role, shown in wanted if shown and value is not None]
 
+    def _phase_levels(self, lower: float, upper: float) -> list[Curve]:
+        """The odd multiples of 180 degrees, on which L is a negative real number."""
+        first, last = np.ceil((lower - 180) / 360), np.floor((upper - 180) / 360)
+        return [self._level(180 + 360 * float(turn), Role.UNIT_CIRCLE) for turn in np.arange(first, last + 1)]
+
     def _marks(self, values: FloatArray) -> list[Mark]:
         """Margins, crossovers and the cursor on the line through ``values`` (n,)."""
         places = [] if self.cursor is None else [(self.cursor, Glyph.CURSOR, Role.CURSOR)]
@@ -239,12 +244,6 @@ def _rounded_range(seen: FloatArray, always: float, step: float, most: float) ->
     if -lower > upper:
         return float(always + lower + excess), float(always + upper)
     return float(always + lower), float(always + upper - excess)
-
-
-def _negative_real(lower: float, upper: float) -> list[float]:
-    """The odd multiples of 180 degrees in a range."""
-    first, last = np.ceil((lower - 180) / 360), np.floor((upper - 180) / 360)
-    return [180 + 360 * float(turn) for turn in np.arange(first, last + 1)]
 
 
 def _tick_count(frame: Frame) -> int:

@@ -22,7 +22,7 @@ def phase_degrees(curve: LoopCurve) -> FloatArray:
         begin = _begin(curve.arcs, before, curve.frequency[start], reached)
         phase[start:stop] = piece + _whole_turns(begin - piece[0])
         reached = float(phase[stop - 1])
-    return np.degrees(phase)
+    return np.asarray(np.degrees(phase))
 
 
 def _begin(arcs: tuple[Arc, ...], lower: float, upper: float, reached: float | None) -> float:

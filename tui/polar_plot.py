@@ -11,7 +11,7 @@ from encircle.engine.result import ComplexArray, LoopCurve
 from encircle.tui.clipping import Window
 from encircle.tui.direction import direction_marks
 from encircle.tui.dots import Canvas
-from encircle.tui.drawing import Curve, Drawing, Frame, Mark
+from encircle.tui.drawing import Caption, Curve, Drawing, Frame, Mark
 from encircle.tui.glyphs import Glyph
 from encircle.tui.locus import fold, folded_line, plane_line
 from encircle.tui.loop_marks import LoopMarks
@@ -20,7 +20,9 @@ from encircle.tui.readout import nearest_index
 from encircle.tui.roles import Role
 from encircle.tui.ticks import Tick, linear_ticks
 
-GUTTER = 6
+GUTTER = 7
+CLOSE_GUTTER = 9
+CLOSE_ZOOM = 8
 FOOT = 1
 # Characters across and rows upwards that a labelled tick needs.
 TICK_COLUMNS = 9
@@ -67,7 +69,7 @@ def polar_drawing(
 
     ``before``: an earlier curve, kept dim behind. ``cursor``: the sample of the curve that the cursor stands on.
     """
-    frame = Frame.fitted(width, height, GUTTER, FOOT)
+    frame = Frame.fitted(width, height, _gutter(view), FOOT)
     line = _line(curve, view)
     window = _window(line, view, frame.canvas)
     signs = _signs(curve, marks, view)
@@ -79,8 +81,10 @@ def polar_drawing(
         window,
         curves=(*_references(marks, window, view), *_band(curve, window, frame.canvas, view), *loci),
         marks=(*_heads(line, signs, window, frame.canvas, view), *signs, *_cursor(curve, cursor, view)),
-        x_ticks=_ticks(window.left, window.right, frame.canvas.columns // TICK_COLUMNS, view),
-        y_ticks=_ticks(window.bottom, window.top, frame.canvas.rows // TICK_ROWS, view),
+        x_ticks=_real_ticks(window, frame.canvas, view),
+        y_ticks=_imaginary_ticks(window, frame.canvas, view),
+        captions=(Caption("rim ∞", Role.LABEL),) if view.folded else (),
+        lattice=not view.folded,
     )
 
 
@@ -171,7 +175,21 @@ def _heads(line: ComplexArray, signs: list[Mark], window: Window, canvas: Canvas
     return direction_marks(line, window, canvas, keep_clear)
 
 
-def _ticks(lower: float, upper: float, most: int, view: PolarView) -> tuple[Tick, ...]:
+def _gutter(view: PolarView) -> int:
+    """Room for the labels of the imaginary axis, which the folded plane has none of."""
+    if view.folded:
+        return 0
+    return CLOSE_GUTTER if view.kind == "near" and view.zoom > CLOSE_ZOOM else GUTTER
+
+
+def _real_ticks(window: Window, canvas: Canvas, view: PolarView) -> tuple[Tick, ...]:
     if view.folded:
         return tuple(Tick(position, label) for label, position in FOLDED_TICKS)
-    return linear_ticks(lower, upper, max(most, 2))
+    return linear_ticks(window.left, window.right, max(canvas.columns // TICK_COLUMNS, 2))
+
+
+def _imaginary_ticks(window: Window, canvas: Canvas, view: PolarView) -> tuple[Tick, ...]:
+    if view.folded:
+        return ()
+    ticks = linear_ticks(window.bottom, window.top, max(-(-canvas.rows // TICK_ROWS), 2))
+    return tuple(Tick(tick.position, tick.label if tick.label == "0" else f"{tick.label}j") for tick in ticks)

@@ -5,15 +5,15 @@ from __future__ import annotations
 import numpy as np
 
 from encircle.engine.result import ComplexArray
-from encircle.tui.clipping import Window
+from encircle.tui.clipping import FloatArray, Window
 from encircle.tui.dots import DOTS_ACROSS, DOTS_UPWARD, Canvas
 
 # What of L counts as near: a curve that stays within FINITE is shown whole, of others the part within NEAR.
 FINITE = 4.0
 NEAR = 2.0
 FARTHEST_CROSSING = 6.0
-# Windows grow in these steps, so that a small change of gain moves the curve and not the picture.
-STEP = 0.25
+# Windows end at these distances from 0, so that a small change of gain moves the curve and not the picture.
+EDGES = np.array([1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.5])
 FOLDED_HALF = 1.04
 NEAR_HALF = 1.5
 
@@ -42,12 +42,16 @@ def near_window(zoom: int, canvas: Canvas, cell_aspect: float) -> Window:
 def whole_window(line: ComplexArray, mirror: bool, canvas: Canvas, cell_aspect: float) -> Window:
     """The unit circle, -1 and the near part of the curve; with the mirrored half the real axis is in the middle."""
     near = _near_part(line)
-    x = np.concatenate([near.real, [-1.0, 1.0]])
-    y = np.concatenate([near.imag, -near.imag if mirror else [], [-1.0, 1.0]])
-    left, right = _outwards(min(x.min(), -1 - STEP), x.max())
-    bottom, top = _outwards(y.min(), y.max())
+    height = np.concatenate([near.imag, -near.imag]) if mirror else near.imag
+    left, right = -_edge(-near.real), _edge(near.real)
+    bottom, top = -_edge(-height), _edge(height)
     centre = complex(left + right, bottom + top) / 2
     return round_window(centre, (right - left) / 2, (top - bottom) / 2, canvas, cell_aspect)
+
+
+def _edge(reach: FloatArray) -> float:
+    """The first of EDGES beyond all values."""
+    return float(EDGES[min(np.searchsorted(EDGES, 1.03 * reach.max(initial=0.0)), EDGES.size - 1)])
 
 
 def _near_part(line: ComplexArray) -> ComplexArray:
@@ -59,13 +63,11 @@ def _near_part(line: ComplexArray) -> ComplexArray:
     return np.concatenate([near, crossings[(crossings < -1) & (crossings >= -FARTHEST_CROSSING)]])
 
 
-def _real_axis_crossings(line: ComplexArray) -> ComplexArray:
-    """Where the chords of the line cross the real axis."""
+def _real_axis_crossings(line: ComplexArray) -> FloatArray:
+    """Where the chords of the line cross the real axis, or end on it."""
     before, after = line[:-1], line[1:]
-    crossed = before.imag * after.imag < 0
-    a, b = before[crossed], after[crossed]
-    return (a - (b - a) * a.imag / (b.imag - a.imag)).real.astype(complex)
-
-
-def _outwards(lower: float, upper: float) -> tuple[float, float]:
-    return STEP * np.floor(lower / STEP - 0.3), STEP * np.ceil(upper / STEP + 0.3)
+    with np.errstate(over="ignore", invalid="ignore"):
+        crossed = (before.imag * after.imag <= 0) & (before.imag != after.imag)
+        a, b = before[crossed], after[crossed]
+        at = a.real - (b.real - a.real) * (a.imag / (b.imag - a.imag))
+    return np.asarray(at[np.isfinite(at)])

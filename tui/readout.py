@@ -12,7 +12,7 @@ from encircle.tui.phase import phase_degrees
 
 @dataclass(frozen=True, slots=True)
 class Readout:
-    """``frequency`` in the file's unit; ``L``; its magnitude in dB (-inf where L is 0) and phase; ``distance`` |1 + L|."""
+    """``frequency`` in the file's unit; ``L``; its magnitude (-inf where L is 0) and phase; ``distance`` = |1 + L|."""
 
     frequency: float
     L: complex
