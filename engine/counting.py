@@ -62,6 +62,18 @@ class Counter:
         determinant = self.system.determinants[key]
         return self._far[key].ending([term.factor(gains) for term in determinant.far_terms])
 
+    def leads(self, key: PartKey) -> list[tuple[Fraction, Fraction]]:
+        """Lead (0 where only a bound is known) and order at infinity of each far term of a part."""
+        return self._far[key].leads
+
+    def models(self, keys: tuple[PartKey, ...]) -> TermModels:
+        """The terms of some parts, compiled once."""
+        if keys not in self._models:
+            terms = [term for key in keys for term in self.system.determinants[key].terms]
+            compiled = TermModels([(term.powers, term.delay) for term in terms], self.system.factor_models)
+            self._models[keys] = compiled
+        return self._models[keys]
+
     def _address(self, key: PartKey, gains: Gains) -> tuple[PartKey, tuple[Fraction, ...]]:
         return key, tuple(gains[loop] for loop in sorted(key[1]))
 
@@ -73,7 +85,7 @@ class Counter:
                 self._store(key, gains, None, (), endings[key])
         if not proved:
             return
-        models = self._models.get(proved) or self._models.setdefault(proved, self._compile(proved))
+        models = self.models(proved)
         weights = weight_matrix([self.system.determinants[key] for key in proved], gains)
         found = [ending for ending in endings.values() if isinstance(ending, Ending)]
         counting = count_zeros(
@@ -86,10 +98,6 @@ class Counter:
         self._edges.setdefault(proved, counting.edges)
         for key, count in zip(proved, counting.counts, strict=True):
             self._store(key, gains, count.zeros, count.open_cells, None)
-
-    def _compile(self, keys: tuple[PartKey, ...]) -> TermModels:
-        terms = [term for key in keys for term in self.system.determinants[key].terms]
-        return TermModels([(term.powers, term.delay) for term in terms], self.system.factor_models)
 
     def _store(
         self, key: PartKey, gains: Gains, zeros: int | None, cells: tuple[OpenCell, ...], far: object

@@ -66,6 +66,11 @@ class FarField:
             _asymptote(product, models, self.radii, growth[i]) for i, product in enumerate(products)
         ]
 
+    @property
+    def leads(self) -> list[tuple[Fraction, Fraction]]:
+        """Lead (0 where only a bound is known) and order of each product."""
+        return [(term.lead, term.order) for term in self._asymptotes]
+
     def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         """The ending of sum_i factors[i] * product_i on the smallest radius that serves, or why there is none."""
         sums: dict[tuple[Fraction, Fraction], Fraction] = defaultdict(Fraction)

@@ -31,18 +31,15 @@ from encircle.engine.measured_factor import MeasuredModel, measured_factors
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import FloatArray
 from encircle.engine.shared_factors import split_shared_factors
-from encircle.engine.term_models import TermModels
 from encircle.engine.transfer_function import TransferFunction, transfer_function
 
-LARGEST_SPREAD = 1e15  # features further apart than this are left out of the start grid's scale
 
 
 @dataclass(frozen=True, slots=True)
 class LoopSystem:
     """Everything about a project that does not depend on the factors at the cuts.
 
-    ``determinants`` belong to ``order.parts()``; ``places`` gives, for each, the slice of its terms in ``models``.
-    ``poles`` holds, for each block, its poles on and right of the axis; ``declared`` the stated unstable poles of measured
+    ``determinants`` belong to ``order.parts()``. ``poles`` holds, for each block, its poles on and right of the axis; ``declared`` the stated unstable poles of measured
     and irrational blocks. ``lowest``, ``highest``: features in rad/s. ``lines``: all measured lines in rad/s, ascending.
     """
 
@@ -55,8 +52,6 @@ class LoopSystem:
     declared: Mapping[str, int]
     factor_models: Mapping[Factor, FactorModel]
     determinants: Mapping[PartKey, Determinant]
-    places: Mapping[PartKey, slice]
-    models: TermModels
     features: FloatArray
     lines: FloatArray
     first_lines: FloatArray
@@ -117,8 +112,6 @@ def compile_system(declarations: Declarations) -> LoopSystem:
         _declared(declarations, irrational),
         models,
         determinants,
-        _places(determinants),
-        TermModels(terms, models),
         features,
         np.unique(np.concatenate(lines)) if lines else np.empty(0),
         np.array([omega[0] for omega in lines]),
@@ -180,11 +173,3 @@ def _moduli(polynomial: Polynomial) -> list[float]:
         return []
     return [float(abs(root)) for root in polynomial.roots() if root != 0]
 
-
-def _places(determinants: Mapping[PartKey, Determinant]) -> dict[PartKey, slice]:
-    places = {}
-    start = 0
-    for key, determinant in determinants.items():
-        places[key] = slice(start, start + len(determinant.terms))
-        start = places[key].stop
-    return places

@@ -1,0 +1,140 @@
+"""The open-loop response L = g B/A of one loop with the earlier loops closed, at any frequency and at the ends of the axis."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+
+from encircle.engine.block_poles import poles_of
+from encircle.engine.closing_order import Stage
+from encircle.engine.coprime_factors import S, IrrationalFactor
+from encircle.engine.counting import Counter, Gains, scaled_floats
+from encircle.engine.loop_determinant import Term
+from encircle.engine.result import ComplexArray, FloatArray
+
+NEAR_ZERO = 1e-9  # where a limit at 0 is taken numerically: this part of the lowest feature
+
+
+@dataclass(frozen=True, slots=True)
+class End:
+    """L at w = 0 or w = infinity: L ~ value * (j w)^order, ``order`` > 0 growing towards infinity.
+
+    At infinity ``swing`` bounds |L| where delayed terms keep turning it (then ``value`` holds only the undelayed part).
+    ``value`` is the finite limit itself when ``order`` is 0.
+    """
+
+    value: float
+    order: float
+    swing: float = 0.0
+
+    @property
+    def limit(self) -> float | None:
+        """The finite real limit, if there is one."""
+        return self.value if self.order == 0 and self.swing == 0.0 else None
+
+
+@dataclass(frozen=True, slots=True)
+class AxisPoleOfLoop:
+    """A point j omega where L is unbounded: |L| ~ |s - j omega|^-order."""
+
+    omega: float
+    order: int
+
+
+class OpenLoop:
+    """L of one stage for given factors at the cuts."""
+
+    def __init__(self, counter: Counter, stage: Stage, gains: Gains) -> None:
+        self.system, self.stage = counter.system, stage
+        system = counter.system
+        self._models = counter.models((stage.part,))
+        self._leads_of_terms = counter.leads(stage.part)
+        terms = system.determinants[stage.part].terms
+        exact = [term.coefficient * term.factor(gains) for term in terms]
+        weights = np.array(scaled_floats(exact))
+        closing = np.array([stage.loop in term.cuts for term in terms])
+        self._weights = np.array([np.where(closing, 0.0, weights), np.where(closing, weights, 0.0)])
+        self.is_zero = not closing.any()
+        self.delayed = any(term.delay > 0 for term in terms)
+        self.poles = self._axis_poles(terms)
+        self.zero = self._at_zero(terms)
+        self.infinity = self._at_infinity(gains)
+
+    def at(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """L and dL/d omega at omega (n,) > 0 in rad/s."""
+        values, slopes = self._models.at_points(omega)
+        with np.errstate(all="ignore"):
+            A, B = self._weights @ values
+            dA, dB = self._weights @ slopes
+            L = B / A
+            return L, (dB - L * dA) / A
+
+    def _axis_poles(self, terms: Sequence[Term]) -> tuple[AxisPoleOfLoop, ...]:
+        """Factors that every term of A holds although the sum of all terms does not vanish there."""
+        before = [term for term in terms if self.stage.loop not in term.cuts]
+        shared = {
+            factor: power
+            for factor in before[0].powers
+            if (power := min(term.powers.get(factor, 0) for term in before)) > 0
+        }
+        orders: dict[float, int] = defaultdict(int)
+        for factor, power in shared.items():
+            for omega in poles_of({factor: 1}).on_axis:
+                orders[omega] += power
+        return tuple(AxisPoleOfLoop(omega, order) for omega, order in sorted(orders.items()))
+
+    def _at_zero(self, terms: Sequence[Term]) -> End:
+        """Lowest powers of s in A and B; what stands with them gives the value."""
+        if self.is_zero:
+            return End(0.0, 0.0)
+        if any(isinstance(factor, IrrationalFactor) for term in terms for factor in term.powers):
+            return self._numerical_end()
+        power = np.array([term.powers.get(S, 0) for term in terms])
+        closing = self._weights[1] != 0.0
+        lowest_A, lowest_B = int(power[~closing].min()), int(power[closing].min())
+        tiny = NEAR_ZERO * self.system.lowest
+        values, _ = self._models.at_points(np.array([tiny]))
+        scale = (1j * tiny) ** power
+        plain = (values[:, 0] / scale).real
+        A = float(self._weights[0][power == lowest_A] @ plain[power == lowest_A])
+        B = float(self._weights[1][power == lowest_B] @ plain[power == lowest_B])
+        if A == 0.0:  # the lowest powers cancel: a pole of the open loop at 0 that belongs to no single block
+            return End(np.nan, -1.0)
+        return End(B / A, float(lowest_B - lowest_A))
+
+    def _numerical_end(self) -> End:
+        tiny = NEAR_ZERO * self.system.lowest
+        L, slope = self.at(np.array([tiny]))
+        order = round(float((tiny * slope[0] / L[0]).real) * 64.0) / 64.0
+        return End(float((L[0] / (1j * tiny) ** order).real), order)
+
+    def _at_infinity(self, gains: Gains) -> End:
+        """Leading powers of A and B, summed exactly; delayed parts of the same power only swing."""
+        if self.is_zero:
+            return End(0.0, 0.0)
+        A, B = self._leads(gains, closing=False), self._leads(gains, closing=True)
+        order_A, order_B = max(order for order, _ in A), max(order for order, _ in B)
+        order = float(order_B - order_A)
+        lead_A = A.get((order_A, Fraction(0)), Fraction(0))
+        loose_A = sum(abs(v) for (o, delay), v in A.items() if o == order_A and delay > 0)
+        lead_B = B.get((order_B, Fraction(0)), Fraction(0))
+        loose_B = sum(abs(v) for (o, delay), v in B.items() if o == order_B and delay > 0)
+        if abs(lead_A) <= loose_A:
+            return End(0.0, order, np.inf)
+        if not loose_A and not loose_B:
+            return End(float(lead_B / lead_A), order)
+        return End(float(lead_B / lead_A), order, float((abs(lead_B) + loose_B) / (abs(lead_A) - loose_A)))
+
+    def _leads(self, gains: Gains, closing: bool) -> dict[tuple[Fraction, Fraction], Fraction]:
+        """Exact leading coefficients by (order, delay); factors that are no polynomials count with their known lead."""
+        sums: dict[tuple[Fraction, Fraction], Fraction] = defaultdict(Fraction)
+        determinant = self.system.determinants[self.stage.part]
+        for term, (lead, order) in zip(determinant.far_terms, self._leads_of_terms, strict=True):
+            if (self.stage.loop in term.cuts) == closing:
+                sums[order, term.delay] += lead * term.factor(gains)
+        kept = {key: value for key, value in sums.items() if value}
+        return kept or {(min(order for order, _ in sums), Fraction(0)): Fraction(0)}
