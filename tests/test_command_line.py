@@ -339,7 +339,8 @@ def test_without_a_terminal_the_screen_refuses_and_names_the_report() -> None:
     assert finished.returncode == 2
     assert finished.stdout == ""
     assert "the screen needs a terminal" in finished.stderr
-    assert f"encircle check {DRIVE_FILE}" in finished.stderr
+    assert "`encircle check FILE`" in finished.stderr
+    assert finished.stderr.count("\n") == 1
 
 
 @pytest.mark.parametrize("term", ["dumb", ""])

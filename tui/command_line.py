@@ -92,10 +92,11 @@ def _result_text(result: Result, as_json: bool) -> str:
 def _screen(arguments: Arguments) -> int:
     """Open the screen, where there is a terminal that can carry it."""
     from encircle.engine import ProjectError, open_project
+    from encircle.tui.terminal_session import why_no_screen
 
-    obstacle = _terminal_obstacle()
-    if obstacle:
-        return _refuse("no-terminal", f"{obstacle}; for a printed report: encircle check {arguments.file}", False)
+    obstacle = why_no_screen(sys.stdin, sys.stderr)
+    if obstacle is not None:
+        return _refuse("no-terminal", obstacle, False)
     try:
         project = open_project(arguments.file)
     except ProjectError as error:
@@ -103,17 +104,6 @@ def _screen(arguments: Arguments) -> int:
     from encircle.tui.app import run_screen
 
     return run_screen(project)
-
-
-def _terminal_obstacle() -> str:
-    """Why the screen cannot be drawn here; empty when it can."""
-    streams = {"standard input": sys.stdin, "standard output": sys.stdout, "standard error": sys.stderr}
-    for name, stream in streams.items():
-        if stream is None or not stream.isatty():
-            return f"the screen needs a terminal, and {name} is none"
-    if os.environ.get("TERM", "dumb") in ("", "dumb", "unknown"):
-        return "the screen needs a terminal that can move its cursor, and TERM names none"
-    return ""
 
 
 def _require_loops(wanted: Iterable[str], known: Sequence[str]) -> None:

@@ -7,8 +7,10 @@ from collections.abc import Iterable, Sequence
 from encircle.engine.result import GainRange, LoopResult, PoleOwner, RealAxisCrossing, Result
 from encircle.tui.margin_table import MISSED_MARK, margin_lines
 from encircle.tui.plain_text import Layout, Style, aligned
+from encircle.tui.tightest_limit import tightest_limit
 from encircle.tui.wording import (
     EVIDENCE_WORDS,
+    LIMIT_WORDS,
     VERDICT_WORDS,
     as_declared,
     count_or_unknown,
@@ -53,13 +55,14 @@ def _overview_cells(number: int, loop: LoopResult) -> tuple[str, ...]:
 
 
 def _limits_in_short(loop: LoopResult) -> str:
-    if not loop.limits:
-        return "none set"
     missed = sum(finding.met is False for finding in loop.limits)
     undecided = sum(finding.met is None for finding in loop.limits)
     if missed:
         return f"{missed} of {len(loop.limits)} MISSED"
-    return f"{undecided} of {len(loop.limits)} undecided" if undecided else f"{len(loop.limits)} met"
+    if undecided:
+        return f"{undecided} of {len(loop.limits)} undecided"
+    tightest = tightest_limit(loop)
+    return f"{len(loop.limits)} met, tightest {LIMIT_WORDS[tightest.name].quantity}" if tightest else "none set"
 
 
 def _loop_style(loop: LoopResult) -> Style | None:
