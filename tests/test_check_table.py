@@ -57,7 +57,7 @@ def test_a_good_project_reads_as_passed_with_every_loop_and_the_caution() -> Non
 def test_margins_are_rounded_down_and_peaks_up() -> None:
     text = report(CURRENT)
     assert line_with("gain increase", text).split()[2:6] == ["15.97", "dB", "×6.292", "at"]  # 15.9770, 6.29286
-    assert "71.26°  towards lag  at 379.2 Hz  at least 45°" in line_with("phase margin", text)  # 71.2641
+    assert "phase margin      71.26°  towards lag  at 379.2 Hz  at least 45°" in text  # 71.2641
     assert "522.0 µs" in line_with("delay margin", text)  # 522.062
     assert "0.7932" in line_with("modulus margin", text)  # 0.793289
     assert "2.012 dB  ×1.261" in line_with("peak of |S|", text)  # 2.01137, 1.26058
