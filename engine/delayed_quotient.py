@@ -8,7 +8,7 @@ from dataclasses import dataclass, field, replace
 from fractions import Fraction
 
 from encircle.engine.polynomial import Polynomial
-from encircle.engine.polynomial_factors import Factors, as_factors, degree, expanded, over_common_base
+from encircle.engine.polynomial_factors import ONE, Factors, as_factors, degree, expanded, over_common_base
 
 MAXIMUM_ORDER = 100
 MAXIMUM_EXPONENT = 64
@@ -19,12 +19,16 @@ DelayedSum = tuple[tuple[Fraction, Polynomial], ...]
 
 
 class UnusableBlockError(ValueError):
-    """What cannot be used, as a code and the rest of a sentence that begins with the block's key."""
+    """What cannot be used: a code, the rest of a sentence that begins with the block's key, the key if known."""
 
-    def __init__(self, code: str, predicate: str) -> None:
+    def __init__(self, code: str, predicate: str, key: str = "") -> None:
         super().__init__(predicate)
         self.code = code
         self.predicate = predicate
+        self.key = key
+
+    def __reduce__(self) -> tuple[type[UnusableBlockError], tuple[str, str, str]]:
+        return (type(self), (self.code, self.predicate, self.key))
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,9 +47,10 @@ class DelayedQuotient:
 
     def __post_init__(self) -> None:
         _check_size(self.gain.numerator.bit_length(), self.gain.denominator.bit_length())
-        inside = max((n.degree for _, n in self.delayed_sum), default=0)
-        check_order(degree(self.numerator) + inside)
-        check_order(degree(self.denominator))
+        if self.numerator or self.delayed_sum:
+            check_order(degree(self.numerator) + max((n.degree for _, n in self.delayed_sum), default=0))
+        if self.denominator:
+            check_order(degree(self.denominator))
 
     @property
     def constant(self) -> Fraction | None:
@@ -65,6 +70,9 @@ class DelayedQuotient:
 
     def __mul__(self, other: DelayedQuotient) -> DelayedQuotient:
         gain = self.gain * other.gain
+        for factor, rest in ((self, other), (other, self)):
+            if factor.constant is not None:
+                return replace(rest, gain=gain)
         numerator, denominator = self.numerator + other.numerator, self.denominator + other.denominator
         plain = DelayedQuotient(gain, numerator, denominator, self.delay + other.delay)
         sums = [x.delayed_sum for x in (self, other) if x.delayed_sum]
@@ -89,12 +97,14 @@ class DelayedQuotient:
     def __pow__(self, exponent: int) -> DelayedQuotient:
         if exponent < 0:
             return DelayedQuotient(Fraction(1)) / self**-exponent
+        if not exponent:
+            return DelayedQuotient(Fraction(1))
         bits = max(self.gain.numerator.bit_length(), self.gain.denominator.bit_length())
         _check_size((bits - 1) * exponent)
         plain = DelayedQuotient(
             self.gain**exponent,
-            Counter({factor: m * exponent for factor, m in self.numerator.items() if exponent}),
-            Counter({factor: m * exponent for factor, m in self.denominator.items() if exponent}),
+            Counter({factor: m * exponent for factor, m in self.numerator.items()}),
+            Counter({factor: m * exponent for factor, m in self.denominator.items()}),
             self.delay * exponent,
         )
         base = DelayedQuotient(Fraction(1), delayed_sum=self.delayed_sum)
@@ -106,6 +116,8 @@ class DelayedQuotient:
         """Over the least common denominator; common factors of the numerators and common dead time stay outside."""
         if not self.gain or not other.gain:
             return self if self.gain else other
+        if self.constant is not None and other.constant is not None:
+            return DelayedQuotient(self.gain + other.gain)
         shared = self.numerator & other.numerator
         upper, lower = over_common_base(self.denominator, other.denominator)
         common = upper | lower
@@ -115,9 +127,6 @@ class DelayedQuotient:
             *_terms(other, other.numerator - shared, common - lower, delay),
         ]
         return DelayedQuotient(Fraction(1), shared, common, delay) * _collected(terms)
-
-    def __sub__(self, other: DelayedQuotient) -> DelayedQuotient:
-        return self + -other
 
 
 def from_polynomial(p: Polynomial) -> DelayedQuotient:
@@ -129,6 +138,8 @@ def lowest_terms(x: DelayedQuotient) -> tuple[DelayedQuotient, Factors]:
     """x without the factors common to numerator and denominator, and those factors; all of a zero's denominator."""
     if not x.gain:
         return DelayedQuotient(Fraction(0)), x.denominator
+    if not x.numerator or not x.denominator:
+        return x, Factors()
     numerator, denominator = over_common_base(x.numerator, x.denominator)
     common = numerator & denominator
     return replace(x, numerator=numerator - common, denominator=denominator - common), common
@@ -156,7 +167,7 @@ def _terms(
     """The numerator of x without what is shared, times what its denominator lacks, term by term."""
     check_order(degree(own) + degree(missing))
     outside = (expanded(own) * expanded(missing)).scaled_by(x.gain)
-    for time, polynomial in x.delayed_sum or ((Fraction(0), Polynomial.of(1)),):
+    for time, polynomial in x.delayed_sum or ((Fraction(0), ONE),):
         yield x.delay - delay + time, outside * polynomial
 
 
@@ -176,25 +187,18 @@ def _collected(terms: Iterable[tuple[Fraction, Polynomial]]) -> DelayedQuotient:
     first = kept[0][0]
     if len(kept) == 1:
         return replace(from_polynomial(kept[0][1]), delay=first)
-    common = _common_divisor(polynomial for _, polynomial in kept)
+    common = Polynomial(()).gcd(*(polynomial for _, polynomial in kept))
     lead = kept[0][1].leading
     quotients = ((time - first, polynomial.exact_quotient(common)) for time, polynomial in kept)
     inside = tuple((time, q.scaled_by(1 / lead)) for time, q in quotients if q is not None)
     return DelayedQuotient(lead, as_factors(common), Counter(), first, inside)
 
 
-def _common_divisor(polynomials: Iterable[Polynomial]) -> Polynomial:
-    common = Polynomial(())
-    for polynomial in polynomials:
-        common = common.gcd(polynomial)
-    return common
-
-
-def check_order(order: int) -> None:
+def check_order(order: int, key: str = "") -> None:
+    """Raises UnusableBlockError for an order above 100."""
     if order > MAXIMUM_ORDER:
-        raise UnusableBlockError(
-            "order-above-100", f"has order {order}, above {MAXIMUM_ORDER}: split it into several blocks of lower order"
-        )
+        predicate = f"has order {order}, above {MAXIMUM_ORDER}: split it into several blocks of lower order"
+        raise UnusableBlockError("order-above-100", predicate, key)
 
 
 def _check_coefficients(p: Polynomial) -> None:

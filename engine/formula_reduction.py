@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from fractions import Fraction
 
 from encircle.engine.delayed_quotient import (
@@ -41,9 +41,10 @@ def reduce_formula(formula: Expression, parameters: Mapping[str, Fraction]) -> D
                 values.append(DelayedQuotient(value))
             case Name(name):
                 values.append(_named(name, parameters))
-            case Negative():
-                operand = values.pop()
-                values.append(None if operand is None else -operand)
+            case Negative() | Operation("+" | "-"):
+                signs = [sign for sign, _ in _summands(node)]
+                summands, values = values[-len(signs) :], values[: -len(signs)]
+                values.append(_sum(signs, summands))
             case Call(function, _):
                 values.append(_called(function, values.pop()))
             case Operation(operator, _, _):
@@ -53,20 +54,52 @@ def reduce_formula(formula: Expression, parameters: Mapping[str, Fraction]) -> D
 
 
 def _operands_first(formula: Expression) -> list[Expression]:
-    """All nodes, operands before what is done with them, without recursion: depth is the user's choice."""
+    """All nodes, operands before what is done with them, without recursion: depth is the user's choice.
+
+    A whole sum is one node, its summands are its operands.
+    """
     order: list[Expression] = []
     pending = [formula]
     while pending:
         node = pending.pop()
         order.append(node)
         match node:
-            case Negative(operand):
-                pending.append(operand)
+            case Negative() | Operation("+" | "-"):
+                pending += [summand for _, summand in _summands(node)]
             case Call(_, argument):
                 pending.append(argument)
             case Operation(_, left, right):
                 pending += [left, right]
     return order[::-1]
+
+
+def _summands(formula: Expression) -> list[tuple[int, Expression]]:
+    """The terms of a sum, in the order written, with their signs 1 or -1, through all its parentheses."""
+    terms: list[tuple[int, Expression]] = []
+    pending = [(1, formula)]
+    while pending:
+        sign, node = pending.pop()
+        match node:
+            case Negative(operand):
+                pending.append((-sign, operand))
+            case Operation("+" | "-" as operator, left, right):
+                pending += [(sign if operator == "+" else -sign, right), (sign, left)]
+            case _:
+                terms.append((sign, node))
+    return terms
+
+
+def _sum(signs: Sequence[int], summands: Sequence[Value]) -> Value:
+    """The signed sum, added up pairwise: that keeps the polynomials short as long as possible."""
+    terms: list[DelayedQuotient] = []
+    for sign, summand in zip(signs, summands, strict=True):
+        if summand is None:
+            return None
+        terms.append(summand if sign > 0 else -summand)
+    while len(terms) > 1:
+        pairs = [a + b for a, b in zip(terms[::2], terms[1::2], strict=False)]
+        terms = pairs + terms[len(terms) & ~1 :]
+    return terms[0]
 
 
 def _named(name: str, parameters: Mapping[str, Fraction]) -> DelayedQuotient:
@@ -82,14 +115,7 @@ def _combined(operator: str, left: Value, right: Value) -> Value:
         if operator == "/" and right is not None:
             check_divisor(right)
         return None
-    match operator:
-        case "+":
-            return left + right
-        case "-":
-            return left - right
-        case "*":
-            return left * right
-    return left / right
+    return left * right if operator == "*" else left / right
 
 
 def _power(base: Value, exponent: Value) -> Value:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import partial, reduce
 from math import gcd
 
 from encircle.engine.modular_arithmetic import chinese_remainder, polynomial_gcd_modulo, primes
@@ -46,32 +47,33 @@ def exact_quotient(dividend: Sequence[int], divisor: Sequence[int]) -> list[int]
     return quotient if not any(remainder) else None
 
 
-def greatest_common_divisor(a: Sequence[int], b: Sequence[int]) -> list[int]:
-    """The primitive greatest common divisor of two non-zero primitive polynomials.
+def greatest_common_divisor(*polynomials: Sequence[int]) -> list[int]:
+    """The primitive greatest common divisor of non-zero primitive polynomials.
 
-    A common divisor keeps its degree modulo every prime that does not divide both leading coefficients, so one prime
-    that shows degree 0 proves a coprime pair. Otherwise images modulo several primes are combined until the candidate
-    divides both. Source: W. S. Brown, "On Euclid's algorithm and the computation of polynomial greatest common
-    divisors", J. ACM 18 (1971), quoted from memory.
+    A common divisor keeps its degree modulo every prime that does not divide all leading coefficients, so one prime
+    that shows degree 0 proves that there is none. Otherwise images modulo several primes are combined until the
+    candidate divides every polynomial. Source: W. S. Brown, "On Euclid's algorithm and the computation of polynomial
+    greatest common divisors", J. ACM 18 (1971), quoted from memory.
     """
-    lead = gcd(a[-1], b[-1])
+    lead = gcd(*(polynomial[-1] for polynomial in polynomials))
     images: list[list[int]] = []
     moduli: list[int] = []
-    previous: list[int] = []
+    wanted = 1
     for prime in primes():
         if lead % prime == 0:
             continue
-        image = polynomial_gcd_modulo(a, b, prime)
+        image = reduce(partial(polynomial_gcd_modulo, prime=prime), polynomials)
         if len(image) == 1:
             return [1]
-        if images and len(image) > len(images[0]):
-            continue
-        if images and len(image) < len(images[0]):
-            images, moduli = [], []
+        if images and len(image) != len(images[0]):
+            if len(image) > len(images[0]):  # an unlucky prime; the other way round those before were
+                continue
+            images, moduli, wanted = [], [], 1
         images.append([c * lead % prime for c in image])
         moduli.append(prime)
-        candidate = primitive_part(chinese_remainder(images, moduli))
-        if candidate == previous and exact_quotient(a, candidate) and exact_quotient(b, candidate):
-            return candidate
-        previous = candidate
+        if len(images) == wanted:
+            candidate = primitive_part(chinese_remainder(images, moduli))
+            if all(exact_quotient(polynomial, candidate) for polynomial in polynomials):
+                return candidate
+            wanted *= 2
     raise AssertionError("the primes never end")

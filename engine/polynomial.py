@@ -26,6 +26,10 @@ class Polynomial:
             size -= 1
         object.__setattr__(self, "coefficients", tuple(self.coefficients[:size]))
 
+    def __hash__(self) -> int:
+        # Hashing a fraction is slow, and factors seldom share both their degree and their constant
+        return hash((len(self.coefficients), self.coefficients[0].numerator if self.coefficients else 0))
+
     @classmethod
     def of(cls, *coefficients: int | Fraction) -> Polynomial:
         """Polynomial.of(1, 2, 3) is 1 + 2 s + 3 s^2."""
@@ -63,6 +67,10 @@ class Polynomial:
         return self + -other
 
     def __mul__(self, other: Polynomial) -> Polynomial:
+        if len(self.coefficients) == 1:
+            return other.scaled_by(self.coefficients[0])
+        if len(other.coefficients) == 1:
+            return self.scaled_by(other.coefficients[0])
         a, a_denominator = _over_common_denominator(self)
         b, b_denominator = _over_common_denominator(other)
         denominator = a_denominator * b_denominator
@@ -94,7 +102,7 @@ class Polynomial:
 
     def scaled_by(self, factor: Fraction) -> Polynomial:
         """factor * p(s)."""
-        return Polynomial(tuple(factor * c for c in self.coefficients))
+        return self if factor == 1 else Polynomial(tuple(factor * c for c in self.coefficients))
 
     def evaluate(self, s: Fraction) -> Fraction:
         """p(s), exactly."""
@@ -136,13 +144,18 @@ class Polynomial:
         factor = self.leading / other.leading / quotient[-1]
         return Polynomial(tuple(factor * c for c in quotient))
 
-    def gcd(self, other: Polynomial) -> Polynomial:
-        """The monic greatest common divisor; gcd(p, 0) is p made monic."""
-        if not self or not other:
-            return (self or other).monic()
-        if not self.degree or not other.degree:
+    def gcd(self, *others: Polynomial) -> Polynomial:
+        """The monic greatest common divisor; zeros among the polynomials change nothing."""
+        polynomials = [p for p in (self, *others) if p]
+        if len(polynomials) < 2:
+            return polynomials[0].monic() if polynomials else self
+        degrees = {p.degree for p in polynomials}
+        if degrees == {1}:
+            return self.monic() if len({p.monic() for p in polynomials}) == 1 else Polynomial.of(1)
+        if 0 in degrees:
             return Polynomial.of(1)
-        return Polynomial.of(*integer_polynomial.greatest_common_divisor(self.integers(), other.integers())).monic()
+        common = integer_polynomial.greatest_common_divisor(*(p.integers() for p in polynomials))
+        return Polynomial.of(*common).monic()
 
     def square_free_factors(self) -> tuple[tuple[Polynomial, int], ...]:
         """Monic square-free factors, pairwise coprime, with their multiplicities; constants have none.

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Iterable, Mapping
+from fractions import Fraction
 
+from encircle.engine.integer_polynomial import multiply
 from encircle.engine.polynomial import Polynomial
 
 # Monic polynomials of degree >= 1 with their multiplicities. + multiplies two products; over one coprime base | is the
@@ -12,6 +14,7 @@ from encircle.engine.polynomial import Polynomial
 Factors = Counter[Polynomial]
 
 S = Polynomial.of(0, 1)
+ONE = Polynomial.of(1)
 
 
 def degree(factors: Mapping[Polynomial, int]) -> int:
@@ -21,10 +24,13 @@ def degree(factors: Mapping[Polynomial, int]) -> int:
 
 def expanded(factors: Mapping[Polynomial, int]) -> Polynomial:
     """The product, multiplied out."""
-    result = Polynomial.of(1)
+    numerators, denominator = [1], 1
     for factor, multiplicity in factors.items():
-        result = result * factor**multiplicity
-    return result
+        integers = factor.integers()
+        for _ in range(multiplicity):
+            numerators = multiply(numerators, integers)
+        denominator *= integers[-1] ** multiplicity
+    return ONE if len(numerators) == 1 else Polynomial(tuple(Fraction(c, denominator) for c in numerators))
 
 
 def as_factors(p: Polynomial) -> Factors:
@@ -60,8 +66,10 @@ def over_common_base(*products: Factors) -> tuple[Factors, ...]:
     Source: E. Bach, J. Driscoll, J. Shallit, "Factor refinement", J. Algorithms 15 (1993), quoted from memory.
     """
     distinct = {factor for factors in products for factor in factors}
+    if len(distinct) < 2:
+        return products
     base = _coprime_base(distinct)
-    if len(base) == len(distinct) and distinct == set(base):
+    if distinct.issuperset(base):
         return products
     return tuple(_rewritten(factors, base) for factors in products)
 

@@ -6,13 +6,12 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import lru_cache
-from math import isfinite, lcm
+from math import isfinite
 from sys import float_info
 
 import numpy as np
 from numpy.typing import NDArray
 
-from encircle.engine.characteristic_polynomial import characteristic_polynomials
 from encircle.engine.declarations import CoefficientBlock, FormulaBlock, RootBlock, StateSpaceBlock
 from encircle.engine.delayed_quotient import (
     DelayedQuotient,
@@ -24,9 +23,9 @@ from encircle.engine.delayed_quotient import (
 )
 from encircle.engine.errors import Problem, ProjectError
 from encircle.engine.formula_reduction import reduce_formula
-from encircle.engine.integer_polynomial import multiply
 from encircle.engine.polynomial import Polynomial
-from encircle.engine.polynomial_factors import Factors, S, as_factors, over_common_base, separated
+from encircle.engine.polynomial_factors import Factors, S, as_factors, degree, over_common_base, separated
+from encircle.engine.state_space import state_space_polynomials
 
 ComplexArray = NDArray[np.complex128]
 FactorList = tuple[tuple[Polynomial, int], ...]
@@ -77,6 +76,7 @@ def transfer_function(block: ModelBlock) -> TransferFunction | None:
                 return _of_roots(block)
         return _of_state_space(block)
     except UnusableBlockError as refusal:
+        key = refusal.key or key
         message = f"`{key}` of block `{block.name}` {refusal.predicate}"
         raise ProjectError(Problem(refusal.code, f"blocks.{block.name}.{key}", message)) from None
 
@@ -116,12 +116,17 @@ def _of_formula(block: FormulaBlock) -> TransferFunction | None:
 
 def _of_coefficients(block: CoefficientBlock) -> TransferFunction:
     numerator, denominator = (Polynomial(tuple(reversed(c))) for c in (block.numerator, block.denominator))
+    check_order(numerator.degree, "numerator")
+    if not denominator:
+        raise UnusableBlockError("zero-denominator", "is empty or zero: give it a coefficient other than 0")
     quotient = from_polynomial(numerator) / from_polynomial(denominator)
     return _in_lowest_terms(replace(quotient, delay=block.dead_time))
 
 
 def _of_roots(block: RootBlock) -> TransferFunction:
     numerator, denominator = _root_factors(block.zeros), _root_factors(block.poles)
+    check_order(degree(numerator), "zeros")
+    check_order(degree(denominator), "poles")
     return _in_lowest_terms(DelayedQuotient(block.leading_gain, numerator, denominator, block.dead_time))
 
 
@@ -137,7 +142,8 @@ def _in_lowest_terms(quotient: DelayedQuotient) -> TransferFunction:
 
 def _finished(x: DelayedQuotient, cancelled: Factors, kept: Factors) -> TransferFunction:
     """The factors sorted and powers of s apart; ``kept`` common factors go into both lists."""
-    numerator, denominator = separated(x.numerator + kept), separated(x.denominator + kept)
+    over_one_base = (over_common_base(factors + kept) for factors in (x.numerator, x.denominator))
+    numerator, denominator = (separated(factors) for (factors,) in over_one_base)
     removed = separated(cancelled)
     _check_range(x, (*numerator, *denominator))
     return TransferFunction(
@@ -178,26 +184,13 @@ def _fits_double(number: Fraction) -> bool:
 
 
 def _of_state_space(block: StateSpaceBlock) -> TransferFunction:
-    """C (sI - A)^-1 B + D over det(sI - A), nothing cancelled; entries are doubles first."""
     check_order(len(block.A))
-    A = [_doubles(row) for row in block.A]
-    B, C = _doubles(block.B), _doubles(block.C)
-    (D,) = _doubles((block.D,))
-    scale = lcm(*(entry.denominator for row in A for entry in row))
-    integer_matrix = [[int(entry * scale) for entry in row] for row in A]
-    parts = characteristic_polynomials(integer_matrix) if A else []
-    denominator = Factors()
-    whole = [1]
-    for part in parts:
-        denominator += as_factors(_rescaled(part, scale))
-        whole = multiply(whole, part)
-    strictly_proper = _adjugate_form(integer_matrix, scale, whole, B, C)
-    numerator = from_polynomial(strictly_proper + _rescaled(whole, scale).scaled_by(D))
-    if not numerator.gain:
-        return _finished(replace(numerator, denominator=denominator), Factors(), Factors())
-    upper, lower = over_common_base(numerator.numerator, denominator)
+    A, B, C = [_doubles(row) for row in block.A], _doubles(block.B), _doubles(block.C)
+    numerator, parts = state_space_polynomials(A, B, C, *_doubles([block.D]))
+    upper = as_factors(numerator) if numerator else Factors()
+    upper, lower = over_common_base(upper, sum(map(as_factors, parts), Factors()))
     common = upper & lower
-    quotient = DelayedQuotient(numerator.gain, upper - common, lower - common, block.dead_time)
+    quotient = DelayedQuotient(numerator.leading, upper - common, lower - common, block.dead_time)
     return _finished(quotient, Factors(), common)
 
 
@@ -208,41 +201,6 @@ def _doubles(numbers: Iterable[Fraction]) -> list[Fraction]:
             "out-of-range", "has an entry beyond double precision (about 1e-308 to 1e308): change the units"
         )
     return [Fraction(float(number)) for number in numbers]
-
-
-def _rescaled(monic: Sequence[int], scale: int) -> Polynomial:
-    """p(scale * s) / scale^degree: from the integer matrix scale * A back to A."""
-    degree = len(monic) - 1
-    return Polynomial(tuple(Fraction(c, scale ** (degree - k)) for k, c in enumerate(monic)))
-
-
-def _adjugate_form(
-    matrix: Sequence[Sequence[int]],
-    scale: int,
-    characteristic: Sequence[int],
-    B: Sequence[Fraction],
-    C: Sequence[Fraction],
-) -> Polynomial:
-    """C adj(sI - A) B for A = matrix/scale from the Markov parameters C A^k B.
-
-    adj(xI - M) = sum_j x^j sum_(i>j) c_i M^(i-j-1) for the characteristic polynomial sum_i c_i x^i of M
-    (F. R. Gantmacher, "The Theory of Matrices", ch. IV, quoted from memory).
-    """
-    size = len(matrix)
-    b_scale, c_scale = (lcm(*(entry.denominator for entry in vector)) for vector in (B, C))
-    state, row = [int(entry * b_scale) for entry in B], [int(entry * c_scale) for entry in C]
-    sparse = [[(j, entry) for j, entry in enumerate(entries) if entry] for entries in matrix]
-    markov = []
-    for _ in range(size):
-        markov.append(sum(map(int.__mul__, row, state)))
-        state = [sum(entry * state[j] for j, entry in entries) for entries in sparse]
-    unit = b_scale * c_scale
-    return Polynomial(
-        tuple(
-            Fraction(sum(map(int.__mul__, characteristic[j + 1 :], markov)), unit * scale ** (size - j - 1))
-            for j in range(size)
-        )
-    )
 
 
 @lru_cache(maxsize=1024)
