@@ -23,7 +23,7 @@ from encircle.engine.expression import Expression
 from encircle.engine.formula import FUNCTIONS, names_used, parse_formula
 from encircle.engine.formula_bounds import check_formula
 from encircle.engine.measured_response import KNOWN_COLUMNS, ResponseFileError, read_response
-from encircle.engine.text import listed, nearest_known, one_line, quoted
+from encircle.engine.text import listed, one_line, quoted
 from encircle.engine.tokens import FormulaError
 
 HIGHEST_ORDER: Final = 100
@@ -50,7 +50,7 @@ def read_block(name: str, table: CheckedTable, around: Surroundings) -> Block | 
     if kinds:
         table.table_error("block-kind", f"the block is given as {listed(kinds)}; exactly one of them is needed")
     else:
-        near = "".join(nearest_known(key, _MARKS) for key in list(table.content)[:20])
+        near = "".join(table.near(key, _MARKS) for key in list(table.content)[:20])
         table.table_error("block-kind", f"the block needs one of {listed(_MARKS, 'or')}{near}")
     return None
 
@@ -63,16 +63,16 @@ def _formula(name: str, table: CheckedTable, around: Surroundings) -> Block | No
     expression = None if text is None else _parsed(table, text)
     if text is None or expression is None:
         return None
-    used = names_used(expression)
+    used = dict.fromkeys(names_used(expression))
     known = _check_names(table, used, own, around)
-    constants = {key: value for key, value in {**around.parameters, **own}.items() if key in used}
+    constants = {key: own.get(key, around.parameters.get(key, _ZERO)) for key in used if key not in ("s", "pi")}
     if not known or not _within_bounds(table, expression, constants):
         return None
     return FormulaBlock(name, expression, text, constants, unstable_poles, note)
 
 
 def _own_parameters(table: CheckedTable, around: Surroundings) -> dict[str, Fraction]:
-    """The numeric keys that are no block keys; values that cannot be used stand as 1, their mistakes being noted."""
+    """The numeric keys that are no block keys, mistakes among them noted."""
     own: dict[str, Fraction] = {}
     for key, value in table.content.items():
         if key in names.FORMULA_KEYS:
@@ -80,13 +80,12 @@ def _own_parameters(table: CheckedTable, around: Surroundings) -> dict[str, Frac
         if key in names.BLOCK_KEYS:
             _not_used(table, key, "formula")
         elif isinstance(value, str | bool | dict):
-            near = nearest_known(key, names.FORMULA_KEYS)
+            near = table.near(key, names.FORMULA_KEYS)
             table.error("unknown-key", key, f"is no key of a block, nor a parameter, being {described(value)}{near}")
         elif complaint := names.complaint_about(key):
             table.error("bad-name", key, complaint)
         else:
-            number = table.number(key)
-            own[key] = Fraction(1) if number is None else number
+            own[key] = table.number_or_stand_in(key)
             if key in around.parameters:
                 table.error("name-twice", key, "repeats a shared parameter of this name; rename one of them")
     return own
@@ -109,14 +108,15 @@ def _check_names(
     table: CheckedTable, used: Collection[str], own: Mapping[str, Fraction], around: Surroundings
 ) -> bool:
     """Note unknown names, and block parameters that the formula does not use."""
-    known = ("s", "pi", *own, *around.parameters)
+    known = dict.fromkeys(("s", "pi", *own, *around.parameters))
     unknown = [name for name in used if name not in known]
+    usable, wanted = (*known, *FUNCTIONS), (*unknown, *names.FORMULA_KEYS)
     for name in unknown:
-        near = nearest_known(name, (*known, *FUNCTIONS))
+        near = table.near(name, usable)
         table.error("unknown-name", "formula", f"uses {quoted(name)}, which is defined nowhere{near}")
     for name in own:
         if name not in used:
-            near = nearest_known(name, (*unknown, *names.FORMULA_KEYS, *own.keys() & set(used)))
+            near = table.near(name, wanted)
             table.error("unused-parameter", name, f"is a parameter that the formula does not use{near}")
     return not unknown
 
@@ -310,7 +310,7 @@ def _refuse_other_keys(table: CheckedTable, used: Collection[str], kind: str) ->
         if key in names.BLOCK_KEYS:
             _not_used(table, key, kind)
         else:
-            near = nearest_known(key, used)
+            near = table.near(key, used)
             table.error("unknown-key", key, f"is no key of a block given by {quoted(kind)}{near}")
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Collection, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -11,6 +11,8 @@ from encircle.engine.mistakes import Mistakes, Place
 from encircle.engine.text import listed, nearest_known, quoted
 from encircle.engine.toml_source import RefusedDecimal
 
+# No round number, so that no formula comes to divide by 0 because of it.
+_STAND_IN = Fraction(618034, 1000003)
 _BARE = frozenset("ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789_-")
 
 
@@ -63,6 +65,10 @@ class CheckedTable:
         """Note a mistake of the table as a whole."""
         self.mistakes.error(code, self.place.where, self.place, sentence)
 
+    def near(self, name: str, known: Iterable[str]) -> str:
+        """A clause that names the nearest known name; empty where further mistakes are only counted."""
+        return "" if self.mistakes.full else nearest_known(name, known)
+
     def has(self, key: str) -> bool:
         """Whether the key is given."""
         return key in self.content
@@ -78,12 +84,16 @@ class CheckedTable:
         """Note every key that is not in ``known``; ``what`` names the table's kind, as in "a loop"."""
         for key in self.content:
             if key not in known:
-                near = "" if self.mistakes.full else nearest_known(key, known)
-                self.error("unknown-key", key, f"is no key of {what}{near}")
+                self.error("unknown-key", key, f"is no key of {what}{self.near(key, known)}")
 
     def number(self, key: str) -> Fraction | None:
         """A finite number, exactly as written."""
         return self._number(key, self.content.get(key), "")
+
+    def number_or_stand_in(self, key: str) -> Fraction:
+        """A finite number; where it cannot be used, which is noted, another one so that reading can go on."""
+        value = self.number(key)
+        return _STAND_IN if value is None else value
 
     def positive(self, key: str) -> float | None:
         """A number above 0, in double precision."""

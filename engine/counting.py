@@ -19,6 +19,7 @@ from encircle.engine.term_models import TermModels
 
 FIRST_EDGE = 0.3  # the first cell ends at this part of the lowest feature
 GRID_RATIO = 1.6
+MOST_TOGETHER = 64  # settings of the gains counted at once, which bounds the memory
 
 Gains = Sequence[Fraction]
 
@@ -45,6 +46,7 @@ class Counter:
         self._far = {key: _far_field(system, determinant) for key, determinant in system.determinants.items()}
         self._models: dict[tuple[PartKey, ...], TermModels] = {}
         self._edges: dict[tuple[PartKey, ...], FloatArray] = {}
+        self._last_edges: dict[PartKey, FloatArray] = {}
 
     def count(self, keys: Sequence[PartKey], gains: Gains) -> list[PartCount]:
         """Counts of several parts; those not known yet are done together on common cells."""
@@ -52,6 +54,18 @@ class Counter:
         if missing:
             self._count_missing(missing, gains)
         return [self._known[self._address(key, gains)] for key in keys]
+
+    def count_at_factors(self, key: PartKey, loop: int, gains: Gains, factors: Sequence[float]) -> list[int | None]:
+        """Poles right of the axis of one part for several factors on top of the gain of one loop, done together."""
+        settings = [_with_factor(gains, loop, factor) for factor in factors]
+        missing = [setting for setting in settings if self._address(key, setting) not in self._known]
+        for i in range(0, len(missing), MOST_TOGETHER):
+            self._count_settings(key, missing[i : i + MOST_TOGETHER])
+        return [self._known[self._address(key, setting)].unstable for setting in settings]
+
+    def cells(self, key: PartKey) -> FloatArray:
+        """Edges of the cells on which a part was last counted, rad/s."""
+        return self._last_edges.get(key, np.empty(0))
 
     def well_posed(self, key: PartKey, gains: Gains) -> bool:
         """Whether the determinant keeps its leading power at infinity (no algebraic loop without a solution)."""
@@ -78,26 +92,46 @@ class Counter:
         return key, tuple(gains[loop] for loop in sorted(key[1]))
 
     def _count_missing(self, keys: tuple[PartKey, ...], gains: Gains) -> None:
-        endings = {key: self.ending(key, gains) for key in keys}
-        proved = tuple(key for key in keys if isinstance(endings[key], Ending))
-        for key in keys:
-            if key not in proved:
-                self._store(key, gains, None, (), endings[key])
+        self._count_together([(key, gains) for key in keys])
+
+    def _count_settings(self, key: PartKey, settings: Sequence[Gains]) -> None:
+        self._count_together([(key, gains) for gains in settings])
+
+    def _count_together(self, tasks: Sequence[tuple[PartKey, Gains]]) -> None:
+        """Count several parts, or one part for several gains, on common cells."""
+        proved: list[tuple[PartKey, Gains, Ending]] = []
+        for key, gains in tasks:
+            ending = self.ending(key, gains)
+            if isinstance(ending, Ending):
+                proved.append((key, gains, ending))
+            else:
+                self._store(key, gains, None, (), ending)
         if not proved:
             return
-        models = self.models(proved)
-        weights = weight_matrix([self.system.determinants[key] for key in proved], gains)
-        found = [ending for ending in endings.values() if isinstance(ending, Ending)]
+        keys = tuple(dict.fromkeys(key for key, _, _ in proved))
+        models = self.models(keys)
+        weights = self._weights(keys, [(key, gains) for key, gains, _ in proved])
+        endings = [ending for _, _, ending in proved]
         counting = count_zeros(
             lambda lower, upper: models.on_cells(lower, upper).combine(weights),
-            found,
-            self._start_edges(proved, max(ending.radius for ending in found)),
+            endings,
+            self._start_edges(keys, max(ending.radius for ending in endings)),
             self.system.lines,
             self.system.lowest,
         )
-        self._edges.setdefault(proved, counting.edges)
-        for key, count in zip(proved, counting.counts, strict=True):
+        self._edges.setdefault(keys, counting.edges)
+        self._last_edges.update(dict.fromkeys(keys, counting.edges))
+        for (key, gains, _), count in zip(proved, counting.counts, strict=True):
             self._store(key, gains, count.zeros, count.open_cells, None)
+
+    def _weights(self, keys: tuple[PartKey, ...], tasks: Sequence[tuple[PartKey, Gains]]) -> FloatArray:
+        """(tasks, terms of all keys): each task's coefficients at the terms of its own part."""
+        starts = np.cumsum([0, *(len(self.system.determinants[key].terms) for key in keys)])
+        weights = np.zeros((len(tasks), int(starts[-1])))
+        for row, (key, gains) in enumerate(tasks):
+            place = keys.index(key)
+            weights[row, starts[place] : starts[place + 1]] = term_weights(self.system.determinants[key], gains)
+        return weights
 
     def _store(
         self, key: PartKey, gains: Gains, zeros: int | None, cells: tuple[OpenCell, ...], far: object
@@ -139,16 +173,15 @@ def _far_field(system: LoopSystem, determinant: Determinant) -> FarField:
     return FarField(products, system.factor_models, 2.0 * system.highest)
 
 
-def weight_matrix(determinants: Sequence[Determinant], gains: Gains) -> FloatArray:
-    """(determinants, terms): each determinant's coefficients at its own terms, scaled so that nothing overflows."""
-    total = sum(len(determinant.terms) for determinant in determinants)
-    weights = np.zeros((len(determinants), total))
-    start = 0
-    for row, determinant in enumerate(determinants):
-        exact = [term.coefficient * term.factor(gains) for term in determinant.terms]
-        weights[row, start : start + len(exact)] = scaled_floats(exact)
-        start += len(exact)
-    return weights
+def term_weights(determinant: Determinant, gains: Gains) -> FloatArray:
+    """The coefficients of a determinant's terms for given factors at the cuts, scaled so that nothing overflows."""
+    return np.array(scaled_floats([term.coefficient * term.factor(gains) for term in determinant.terms]))
+
+
+def _with_factor(gains: Gains, loop: int, factor: float) -> tuple[Fraction, ...]:
+    changed = list(gains)
+    changed[loop] = gains[loop] * Fraction(factor)
+    return tuple(changed)
 
 
 def scaled_floats(exact: Sequence[Fraction]) -> list[float]:

@@ -34,13 +34,16 @@ from encircle.engine.shared_factors import split_shared_factors
 from encircle.engine.transfer_function import TransferFunction, transfer_function
 
 
+HALF_WIDTHS = (-10.0, -3.0, -1.0, -0.3, 0.0, 0.3, 1.0, 3.0, 10.0)
+
 
 @dataclass(frozen=True, slots=True)
 class LoopSystem:
     """Everything about a project that does not depend on the factors at the cuts.
 
     ``determinants`` belong to ``order.parts()``. ``poles`` holds, for each block, its poles on and right of the axis; ``declared`` the stated unstable poles of measured
-    and irrational blocks. ``lowest``, ``highest``: features in rad/s. ``lines``: all measured lines in rad/s, ascending.
+    and irrational blocks. ``features``: frequencies in rad/s, ascending, near which the slope of something changes; ``resonances``: where to look
+    closely. ``lines``: all measured lines in rad/s, ascending.
     """
 
     declarations: Declarations
@@ -53,6 +56,7 @@ class LoopSystem:
     factor_models: Mapping[Factor, FactorModel]
     determinants: Mapping[PartKey, Determinant]
     features: FloatArray
+    resonances: FloatArray
     lines: FloatArray
     first_lines: FloatArray
 
@@ -113,6 +117,7 @@ def compile_system(declarations: Declarations) -> LoopSystem:
         models,
         determinants,
         features,
+        _resonances(transfers.values()),
         np.unique(np.concatenate(lines)) if lines else np.empty(0),
         np.array([omega[0] for omega in lines]),
     )
@@ -166,6 +171,17 @@ def _features(
         found += block.features
     usable = np.array(sorted(value for value in found if 1e-100 < value < 1e100))
     return usable if len(usable) else np.ones(1)
+
+
+def _resonances(transfers: Iterable[TransferFunction]) -> FloatArray:
+    """Points across each lightly damped pole or zero, in steps of its half width, rad/s."""
+    found: list[float] = []
+    for transfer in transfers:
+        for factor, _ in (*transfer.numerator, *transfer.denominator):
+            for root in factor.roots():
+                if root.imag > 0.0 and abs(root.real) < 0.5 * abs(root):
+                    found += [float(root.imag + step * abs(root.real)) for step in HALF_WIDTHS]
+    return np.array(sorted(value for value in found if 0.0 < value < 1e100))
 
 
 def _moduli(polynomial: Polynomial) -> list[float]:

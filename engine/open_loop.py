@@ -12,7 +12,7 @@ import numpy as np
 from encircle.engine.block_poles import poles_of
 from encircle.engine.closing_order import Stage
 from encircle.engine.coprime_factors import S, IrrationalFactor
-from encircle.engine.counting import Counter, Gains, scaled_floats
+from encircle.engine.counting import Counter, Gains, term_weights
 from encircle.engine.loop_determinant import Term
 from encircle.engine.result import ComplexArray, FloatArray
 
@@ -54,15 +54,16 @@ class OpenLoop:
         self._models = counter.models((stage.part,))
         self._leads_of_terms = counter.leads(stage.part)
         terms = system.determinants[stage.part].terms
-        exact = [term.coefficient * term.factor(gains) for term in terms]
-        weights = np.array(scaled_floats(exact))
+        weights = term_weights(system.determinants[stage.part], gains)
         closing = np.array([stage.loop in term.cuts for term in terms])
         self._weights = np.array([np.where(closing, 0.0, weights), np.where(closing, weights, 0.0)])
         self.is_zero = not closing.any()
         self.delayed = any(term.delay > 0 for term in terms)
+        self.measured = bool(system.measured_in(stage.part))
         self.poles = self._axis_poles(terms)
         self.zero = self._at_zero(terms)
         self.infinity = self._at_infinity(gains)
+        self.endless = self._keeps_turning()
 
     def at(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         """L and dL/d omega at omega (n,) > 0 in rad/s."""
@@ -128,6 +129,19 @@ class OpenLoop:
         if not loose_A and not loose_B:
             return End(float(lead_B / lead_A), order)
         return End(float(lead_B / lead_A), order, float((abs(lead_B) + loose_B) / (abs(lead_A) - loose_A)))
+
+    def _keeps_turning(self) -> bool:
+        """Whether dead time turns L for ever at high frequency: its leading terms are delayed."""
+        if self.is_zero or not self.delayed:
+            return False
+        far = self.system.determinants[self.stage.part].far_terms
+        closing = [
+            (order, term.delay)
+            for term, (_, order) in zip(far, self._leads_of_terms, strict=True)
+            if self.stage.loop in term.cuts
+        ]
+        top = max(order for order, _ in closing)
+        return any(delay > 0 for order, delay in closing if order == top)
 
     def _leads(self, gains: Gains, closing: bool) -> dict[tuple[Fraction, Fraction], Fraction]:
         """Exact leading coefficients by (order, delay); factors that are no polynomials count with their known lead."""

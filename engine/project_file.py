@@ -20,7 +20,7 @@ from encircle.engine.loop_declarations import read_limits, read_loops
 from encircle.engine.mistakes import Mistakes, Place
 from encircle.engine.names import NamedThing, complaint_about, repeated, twice
 from encircle.engine.signal_equation import Vocabulary, names_in, parse_equation
-from encircle.engine.text import listed, nearest_known, one_line, printable, quoted
+from encircle.engine.text import listed, one_line, printable, quoted
 from encircle.engine.tokens import FormulaError
 from encircle.engine.toml_source import Source, read_source
 
@@ -135,11 +135,7 @@ def _name_error(root: CheckedTable, code: str, thing: NamedThing, sentence: str)
 
 
 def _parameters(table: CheckedTable | None) -> dict[str, Fraction]:
-    """The shared parameters; values that cannot be used stand as 1, their mistakes being noted."""
-    if table is None:
-        return {}
-    values = {key: table.number(key) for key in table.content}
-    return {key: Fraction(1) if value is None else value for key, value in values.items()}
+    return {key: table.number_or_stand_in(key) for key in table.content} if table else {}
 
 
 def _blocks(table: CheckedTable | None, around: Surroundings) -> dict[str, Block]:
@@ -190,8 +186,7 @@ def _unknown_names(table: CheckedTable, name: str, text: str, vocabulary: Vocabu
     unknown = [used for used in names_in(text) if not vocabulary.knows(used) and complaint_about(used) is None]
     known = [*vocabulary.sources, *vocabulary.blocks, *vocabulary.parameters]
     for used in unknown:
-        near = "" if table.mistakes.full else nearest_known(used, known)
-        table.error("unknown-name", name, f"uses {quoted(used)}, which is defined nowhere{near}")
+        table.error("unknown-name", name, f"uses {quoted(used)}, which is defined nowhere{table.near(used, known)}")
     return bool(unknown)
 
 

@@ -6,7 +6,7 @@ import difflib
 from collections.abc import Iterable
 
 SHOWN_LENGTH = 60
-_COMPARED_NAMES = 2000
+_COMPARED_NAMES = 500
 _ESCAPED_BACKQUOTE = r"\x60"
 
 

@@ -1,0 +1,89 @@
+"""Warnings that need the algebra of the blocks: repeated, shared and cancelled poles on or right of the axis."""
+
+from __future__ import annotations
+
+from collections import Counter, defaultdict
+
+from encircle.engine.coprime_factors import Factor
+from encircle.engine.errors import Problem
+from encircle.engine.loop_system import LoopSystem
+from encircle.engine.polynomial import Polynomial
+
+
+def algebra_warnings(system: LoopSystem) -> tuple[Problem, ...]:
+    """All of them, in the order of the file."""
+    return (*_cancelled(system), *_copied(system), *_equal(system), *_outside(system))
+
+
+def _cancelled(system: LoopSystem) -> list[Problem]:
+    """A common factor on or right of the axis that the reduction of one block removed."""
+    found = []
+    for name, transfer in system.transfers.items():
+        removed = [factor for factor, _ in transfer.cancelled if sum(factor.count_right())]
+        if removed or transfer.power_cancelled:
+            message = (
+                f"block `{name}`: numerator and denominator share a root on or right of the imaginary axis, which was cancelled; "
+                "if the device has that mode, write it as two blocks"
+            )
+            found.append(Problem("cancelled-in-block", f"blocks.{name}", message))
+    return found
+
+
+def _bad(system: LoopSystem, block: str) -> bool:
+    poles = system.poles[block]
+    return bool(poles.right or poles.on_axis or system.declared.get(block, 0))
+
+
+def _copied(system: LoopSystem) -> list[Problem]:
+    uses = Counter(system.diagram.blocks)
+    found = []
+    for name in system.declarations.blocks:
+        if uses[name] > 1 and _bad(system, name):
+            message = (
+                f"block `{name}` has poles on or right of the imaginary axis and is used {uses[name]} times: each use is one more copy of "
+                f"its dynamics; write one device that receives two signals as {name}*(a + b)"
+            )
+            found.append(Problem("unstable-block-copied", f"blocks.{name}", message))
+    return found
+
+
+def _equal(system: LoopSystem) -> list[Problem]:
+    """Equal poles on or right of the axis in two blocks."""
+    holders: dict[Factor, list[str]] = defaultdict(list)
+    for name in system.declarations.blocks:
+        for factor, power in system.factors[name].denominator.items():
+            if power > 0 and isinstance(factor, Polynomial) and sum(factor.count_right()):
+                holders[factor].append(name)
+    found = []
+    for factor, names in holders.items():
+        if len(names) > 1:
+            root = max(factor.roots(), key=lambda r: (r.real, r.imag))
+            listed = ", ".join(f"`{name}`" for name in names[:-1]) + f" and `{names[-1]}`"
+            message = (
+                f"blocks {listed} all have the pole {_root_text(root)} rad/s: blocks are separate devices, so if two of them "
+                "describe one device, its pole is counted twice"
+            )
+            found.append(Problem("equal-poles", f"blocks.{names[0]}", message))
+    return found
+
+
+def _root_text(root: complex) -> str:
+    if root.imag == 0.0:
+        return f"{root.real:.6g}"
+    real = f"{root.real:.6g} " if root.real else ""
+    return f"{real}+-j{abs(root.imag):.6g}"
+
+
+def _outside(system: LoopSystem) -> list[Problem]:
+    """Unstable blocks that stand in no feedback even with all loops closed."""
+    found = []
+    for node in system.order.lone_when_closed:
+        name = system.diagram.blocks[node]
+        count = system.poles[name].right + system.declared.get(name, 0)
+        if count:
+            message = (
+                f"block `{name}` has {count} unstable pole{'s' if count > 1 else ''} and lies in no feedback loop: "
+                "nothing in this diagram stabilises it"
+            )
+            found.append(Problem("unstable-outside-loops", f"blocks.{name}", message))
+    return found
