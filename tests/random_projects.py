@@ -10,6 +10,8 @@ from collections.abc import Mapping, Sequence
 from fractions import Fraction
 
 import numpy as np
+from exact_roots import descending, rational
+from flint import fmpq_poly
 
 from encircle.engine.declarations import (
     Block,
@@ -118,6 +120,21 @@ def in_sections(zeros: list[list[float]], poles: list[list[float]]) -> list[Bloc
         for index, pole in enumerate(poles)
     ]
     return blocks + [coefficients(f"zero_{index}", zeros[index], [1.0]) for index in range(len(poles), len(zeros))]
+
+
+def random_stable_loop(rng: Random) -> tuple[Declarations, fmpq_poly, fmpq_poly]:
+    """A loop of order 1 to 8 that is often stable, with N and D of its L: mild gains, few unstable factors."""
+    order = int(rng.integers(1, 9))
+    poles = sections(rng, order, 0.06)
+    zeros = sections(rng, int(rng.integers(max(0, order - 3), order + 1)), 0.04)
+    if rng.random() < 0.3:
+        poles[0] = [1.0, 0.0] if len(poles[0]) == 2 else [1.0, poles[0][1], 0.0]
+    numerator, denominator = expanded(zeros), expanded(poles)
+    gain = abs(scaled_gain(rng, numerator, denominator)) * float(rng.choice([1, 1, 0.2]))
+    block = coefficients("whole", numerator, denominator)
+    signals = {"error": (term(-1, [], "output"),), "output": (term(gain, ["whole"], "error"),)}
+    N, D = descending(numerator) * rational(gain), descending(denominator)
+    return declared([block], signals, [loop("loop", "error")]), N, D
 
 
 # ---- cascades --------------------------------------------------------------------------------------------------------
