@@ -37,7 +37,7 @@ def _heading(result: Result, layout: Layout) -> list[str]:
 def outcome_sentence(result: Result) -> str:
     """Why the result is what it is, in one sentence."""
     if result.result == "pass":
-        return "Every loop is stable or as declared, every limit is met, and no unstable pole is left."
+        return "Every loop below is stable or as declared, every limit is met, and no unstable pole is left."
     reasons = [reason for loop in result.loops for reason in _loop_reasons(loop)]
     if result.unstable_poles_all_closed:
         poles = plural(result.unstable_poles_all_closed, "unstable pole")

@@ -169,6 +169,7 @@ def _gain_ranges(loop: LoopResult) -> list[str]:
     start = max(0, min(here - MOST_LISTED // 2, len(loop.gain_ranges) - MOST_LISTED))
     shown = loop.gain_ranges[start : start + MOST_LISTED]
     left_out = ["more with --json"] if len(shown) < len(loop.gain_ranges) else []
+    left_out += ["above it not listed"] if shown[-1].upper is not None and not left_out else []
     return [f"Over the gain factor: {'; '.join([*(_gain_range(item) for item in shown), *left_out])}."]
 
 
