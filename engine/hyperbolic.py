@@ -129,8 +129,8 @@ _QUOTIENT = _Series(lambda k: 1.0 / factorial(k + 1))
 def _series(z: TaylorModel, series: _Series) -> TaylorModel:
     """f(v + y), y = d t + e t^2 + zeta: second order at v; |f'''|/6 <= ``third`` on the disc that holds the cell.
 
-    The powers v^0 ... v^23 are formed one from the other; their rounding, 8 u k each, and that of the sums stay below
-    (8 + 24) 24 u of the sum of absolute values, charged as 128 units of SLACK.
+    The powers v^0 ... v^23 are formed one from the other: 3 k u for v^k, and 28 u for the sum of 24 products; weighted with
+    c_k, whose mean index is below 1, less than 64 u of the sum of the c_k.
     """
     if z.exponent is not None:
         factor = np.ldexp(1.0, z.exponent)
@@ -142,5 +142,5 @@ def _series(z: TaylorModel, series: _Series) -> TaylorModel:
     sigma = size_d + size_e
     tail = np.abs(first) * z.r + np.abs(second) * (2.0 * size_d * size_e + size_e * size_e + z.r * (2.0 * sigma + z.r))
     tail = tail + series.third * (sigma + z.r) ** 3
-    slack = 128.0 * SLACK * series.size * (1.0 + sigma + sigma * sigma)
+    slack = 8.0 * SLACK * series.size * (1.0 + sigma + z.r) ** 2
     return TaylorModel(value, first * z.d, first * z.e + second * (z.d * z.d), outward(tail * (1.0 + SLACK) + slack))

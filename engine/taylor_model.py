@@ -254,7 +254,8 @@ def _segment_distance_lower(c: ComplexArray, d: ComplexArray) -> FloatArray:
     length = np.abs(d)
     turned = c * np.conj(np.where(length > 1e-290, d / length, 1.0))
     beyond = np.maximum(np.abs(turned.real) - length, 0.0)
-    return np.hypot(beyond, turned.imag) * (1.0 - SLACK) - 3.0 * SLACK * (np.abs(c) + length) - TINY
+    distance: FloatArray = np.hypot(beyond, turned.imag) * (1.0 - SLACK) - 3.0 * SLACK * (np.abs(c) + length) - TINY
+    return distance
 
 
 def argument_range(q: TaylorModel) -> tuple[FloatArray, FloatArray]:

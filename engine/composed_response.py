@@ -1,0 +1,180 @@
+"""Formulas that are irrational in s: enclosures on cells of the imaginary axis, at infinity, and plain values."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+from functools import cached_property
+
+import numpy as np
+
+from encircle.engine.declarations import FormulaBlock
+from encircle.engine.errors import Problem, ProjectError
+from encircle.engine.factored_formula import (
+    Factor,
+    Function,
+    PrincipalPower,
+    Product,
+    Sum,
+    factored_formula,
+)
+from encircle.engine.formula_at_infinity import FarField
+from encircle.engine.formula_on_cells import QUARTER_TURN, Ray
+from encircle.engine.growth import Growth, unknown
+from encircle.engine.real_interval import RealInterval
+from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.rounding import check_elementary_functions
+from encircle.engine.taylor_model import BoolArray, IntArray, TaylorModel, exponents, multiply
+
+Enclosure = tuple[ComplexArray, ComplexArray, ComplexArray, FloatArray, IntArray]
+
+BESIDE_THE_CUT = 2.0**-32  # rad right of the imaginary axis, for plain values where the axis itself is a cut
+SEARCH_GRID = np.logspace(-18.0, 18.0, 217)  # rad/s
+
+
+class Composed:
+    """A formula in s as enclosures. Proved under the assumption on elementary functions stated in ``rounding``.
+
+    ``power_at_zero`` p: H = s^p times a part that is finite at s = 0, and not 0 there unless terms cancel in a way that the
+    algebra does not see.
+    """
+
+    def __init__(self, block: FormulaBlock) -> None:
+        """Compile. Raises ProjectError where a constant divides by zero, is not real, or leaves double precision."""
+        check_elementary_functions()
+        try:
+            self.formula = factored_formula(block.formula, block.parameters)
+        except (ValueError, ZeroDivisionError, OverflowError) as error:
+            raise ProjectError(Problem("formula-constant", f"blocks.{block.name}.formula", f"{error}")) from None
+        self.power_at_zero: Fraction = self.formula.order
+
+    def on_cells(self, centre: FloatArray, half: FloatArray) -> Enclosure:
+        """H on the cells s = j(centre + half t), |t| <= 1; centre >= half >= 0, (n,), rad/s.
+
+        Returns v, d, e (complex), r (real, inf where nothing is proved) and integer exponents, all (n,): H lies in
+        2^exponent (v + d t + e t^2 + Disc(0, r)).
+        """
+        with np.errstate(all="ignore"):
+            return _finished(Ray(centre, half).full(self.formula))
+
+    def regular_on_cells(self, centre: FloatArray, half: FloatArray) -> Enclosure:
+        """H/s^power_at_zero on the cells, as ``on_cells``."""
+        with np.errstate(all="ignore"):
+            return _finished(Ray(centre, half).regular(self.formula))
+
+    def at_points(self, omega: FloatArray) -> ComplexArray:
+        """Plain values of H(j omega), principal branch; the limit from Re s > 0 where the axis is a cut."""
+        return self.values_and_slopes(omega)[0]
+
+    def values_and_slopes(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """H(j omega) and its derivative with respect to omega, per rad/s, both (n,) complex."""
+        return _values_and_slopes(self.formula, omega, self.power_at_zero)
+
+    def regular_values_and_slopes(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """H/s^power_at_zero at s = j omega and its derivative with respect to omega."""
+        return _values_and_slopes(self.formula, omega, Fraction(0))
+
+    def at_infinity(self, radius: float | FloatArray) -> Growth:
+        """H on |s| >= R, Re s >= 0, for one R or an array of them (rad/s)."""
+        radii = np.atleast_1d(np.asarray(radius, dtype=float))
+        with np.errstate(all="ignore"):
+            try:
+                return FarField(radii).product(self.formula).bounded()
+            except OverflowError:  # a coefficient of the expansion leaves double precision
+                return unknown(radii)
+
+    @cached_property
+    def features(self) -> tuple[float, ...]:
+        """Frequencies near which H changes, rad/s, ascending: best effort, for start grids and plots."""
+        with np.errstate(all="ignore"):
+            return _features(self.formula)
+
+
+def power_on_cells(alpha: float, a: float, centre: FloatArray, half: FloatArray) -> Enclosure:
+    """(s/(s + a))^alpha, a > 0, alpha > 0, on the cells, as ``Composed.on_cells``; also on one that touches 0."""
+    one, exponent = RealInterval.exact(1), Fraction(alpha)
+    terms = (Product(one, Fraction(1), ()), Product(RealInterval.exact(Fraction(a)), Fraction(0), ()))
+    base = Product(one, Fraction(0), ((Sum(terms, Fraction(0)), Fraction(1)),))
+    with np.errstate(all="ignore"):
+        ray = Ray(centre, half)
+        below = ray.regular_factor(PrincipalPower(base, -exponent, Fraction(0)))
+        return _finished(multiply(ray.power(exponent), below))
+
+
+def _finished(model: TaylorModel) -> Enclosure:
+    """Plain arrays; cells on which anything is not finite hold zeros and an infinite radius."""
+    parts = (model.v, model.d, model.e)
+    sound = np.isfinite(model.r)
+    for part in parts:
+        sound &= np.isfinite(part)
+    v, d, e = (np.where(sound, part, 0.0) for part in parts)
+    return v, d, e, np.where(sound, model.r, np.inf), exponents(model)
+
+
+def _values_and_slopes(product: Product, omega: FloatArray, power: Fraction) -> tuple[ComplexArray, ComplexArray]:
+    """s^power times the regular part of the product, and its derivative, at points."""
+    omega = np.asarray(omega, dtype=float)
+    with np.errstate(all="ignore"):
+        v, slope, unsure = _on_ray(product, omega, power, QUARTER_TURN)
+        if unsure.any():
+            beside = _on_ray(product, omega[unsure], power, QUARTER_TURN - BESIDE_THE_CUT)
+            v[unsure], slope[unsure] = beside[0], beside[1]
+    return v, slope
+
+
+def _on_ray(
+    product: Product, omega: FloatArray, power: Fraction, angle: float
+) -> tuple[ComplexArray, ComplexArray, BoolArray]:
+    """Value, derivative (the linear coefficient of narrow cells), and where the enclosure proves nothing."""
+    ray = Ray(omega, 1e-9 * omega, angle)
+    model = ray.times_power(product, power)
+    size = np.ldexp(1.0, exponents(model))
+    return model.v * size, model.d * size / ray.half, ~np.isfinite(model.r)
+
+
+def _features(formula: Product) -> tuple[float, ...]:
+    """Where the largest term of a sum changes, and where the argument of a function passes size 1."""
+    ray = Ray(SEARCH_GRID, 0.0 * SEARCH_GRID)
+    found: set[float] = set()
+    for factor in _factors(formula):
+        if isinstance(factor, Sum):
+            terms = (ray.times_power(term, term.order) for term in factor.terms)
+            found.update(_takeovers(np.array([_logarithm(term) for term in terms])))
+        elif isinstance(factor, Function):
+            size = _logarithm(ray.full(factor.argument))
+            found.update(_takeovers(np.array([size, 0.0 * size])))
+    return tuple(sorted(found))
+
+
+def _factors(formula: Product) -> list[Factor]:
+    """Every factor in the formula once, at any depth."""
+    seen: dict[Factor, None] = {}
+    waiting = [factor for factor, _ in formula.factors]
+    while waiting:
+        factor = waiting.pop()
+        if factor not in seen:
+            seen[factor] = None
+            inner = factor.terms if isinstance(factor, Sum) else (_inside(factor),)
+            waiting += [part for product in inner for part, _ in product.factors]
+    return list(seen)
+
+
+def _inside(factor: PrincipalPower | Function) -> Product:
+    return factor.base if isinstance(factor, PrincipalPower) else factor.argument
+
+
+def _logarithm(model: TaylorModel) -> FloatArray:
+    """log2 of the size at the middle of each cell."""
+    size = np.log2(np.abs(model.v)) + exponents(model)
+    return np.where(np.isnan(size), -np.inf, size)
+
+
+def _takeovers(sizes: FloatArray) -> list[float]:
+    """Frequencies at which the largest row of log sizes (rows, grid) changes, by linear interpolation."""
+    largest = np.argmax(sizes, axis=0)
+    before = np.flatnonzero(largest[1:] != largest[:-1])
+    gap = sizes[largest[before], before] - sizes[largest[before + 1], before]
+    gap_after = sizes[largest[before + 1], before + 1] - sizes[largest[before], before + 1]
+    share = np.clip(np.nan_to_num(gap / (gap + gap_after), nan=0.5), 0.0, 1.0)
+    logarithm = np.log(SEARCH_GRID)
+    places = np.exp(logarithm[before] + share * (logarithm[before + 1] - logarithm[before]))
+    return [float(place) for place in places]
