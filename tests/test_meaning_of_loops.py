@@ -111,15 +111,20 @@ def test_inner_loops_are_closed_and_outer_ones_open(tmp_path: Path) -> None:
 
 
 def test_order_changes_L_but_not_the_poles_with_all_loops_closed(tmp_path: Path) -> None:
-    """Outer first: L = 8/(s(s+1)); then the inner one sees 4 s/(s^2 + s + 8)."""
-    found = opened(HEAD + CASCADE + loops("outer outer_error", "inner inner_error"), tmp_path)
+    """The inner loop cut at its sensor, so that it may close last: L = 8/(s(s+1)), then 4 s/(s^2 + s + 8)."""
+    text = CASCADE.replace("speed_command - speed", "speed_command - sensed") + 'sensed = "speed"\n'
+    found = opened(HEAD + text + loops("outer outer_error", "inner sensed"), tmp_path)
     s = 3j
     assert complex(found.response("outer", np.array([3.0]))[0]) == pytest.approx(8 / (s * (s + 1)), rel=1e-12)
     assert complex(found.response("inner", np.array([3.0]))[0]) == pytest.approx(4 * s / (s * s + s + 8), rel=1e-12)
-    other = opened(HEAD + CASCADE + loops("inner inner_error", "outer outer_error"), tmp_path)
+    other = opened(HEAD + text + loops("inner sensed", "outer outer_error"), tmp_path)
     assert found.check().unstable_poles_all_closed == other.check().unstable_poles_all_closed == 0
 
 
+def test_a_path_through_an_open_cut_is_open(tmp_path: Path) -> None:
+    """The outer loop of the cascade runs through the inner error: it cannot close before it."""
+    message = refusal(HEAD + CASCADE + loops("outer outer_error", "inner inner_error"), tmp_path)
+    assert "until loop `inner` is closed" in message
 
 
 def test_a_cut_that_no_feedback_reaches_yet_names_the_loop_to_close_first(tmp_path: Path) -> None:
