@@ -23,7 +23,7 @@ from encircle.engine.expression import Expression
 from encircle.engine.formula import FUNCTIONS, names_used, parse_formula
 from encircle.engine.formula_bounds import check_formula
 from encircle.engine.measured_response import KNOWN_COLUMNS, ResponseFileError, read_response
-from encircle.engine.text import listed, one_line, quoted
+from encircle.engine.text import listed, nearest_known, one_line, quoted
 from encircle.engine.tokens import FormulaError
 
 HIGHEST_ORDER: Final = 100
@@ -50,7 +50,7 @@ def read_block(name: str, table: CheckedTable, around: Surroundings) -> Block | 
     if kinds:
         table.table_error("block-kind", f"the block is given as {listed(kinds)}; exactly one of them is needed")
     else:
-        near = "".join(table.near(key, _MARKS) for key in list(table.content)[:20])
+        near = "".join(nearest_known(key, _MARKS) for key in list(table.content)[:20])
         table.table_error("block-kind", f"the block needs one of {listed(_MARKS, 'or')}{near}")
     return None
 
@@ -80,7 +80,7 @@ def _own_parameters(table: CheckedTable, around: Surroundings) -> dict[str, Frac
         if key in names.BLOCK_KEYS:
             _not_used(table, key, "formula")
         elif isinstance(value, str | bool | dict):
-            near = table.near(key, names.FORMULA_KEYS)
+            near = nearest_known(key, names.FORMULA_KEYS)
             table.error("unknown-key", key, f"is no key of a block, nor a parameter, being {described(value)}{near}")
         elif complaint := names.complaint_about(key):
             table.error("bad-name", key, complaint)
@@ -112,11 +112,11 @@ def _check_names(
     unknown = [name for name in used if name not in known]
     usable, wanted = (*known, *FUNCTIONS), (*unknown, *names.FORMULA_KEYS)
     for name in unknown:
-        near = table.near(name, usable)
+        near = nearest_known(name, usable)
         table.error("unknown-name", "formula", f"uses {quoted(name)}, which is defined nowhere{near}")
     for name in own:
         if name not in used:
-            near = table.near(name, wanted)
+            near = nearest_known(name, wanted)
             table.error("unused-parameter", name, f"is a parameter that the formula does not use{near}")
     return not unknown
 
@@ -199,8 +199,9 @@ def _root(table: CheckedTable, key: str, place: int, value: object) -> _Root | N
 
 
 def _pairs_given_once(table: CheckedTable, key: str, roots: Sequence[_Root]) -> bool:
+    given = set(roots)
     for real, imaginary in roots:
-        if imaginary > 0 and (real, -imaginary) in roots:
+        if imaginary > 0 and (real, -imaginary) in given:
             shown = f"`[{float(real):.6g}, {float(imaginary):.6g}]`"
             table.error("bad-root", key, f"lists the conjugate of {shown} too; one of them stands for the pair")
             return False
@@ -310,7 +311,7 @@ def _refuse_other_keys(table: CheckedTable, used: Collection[str], kind: str) ->
         if key in names.BLOCK_KEYS:
             _not_used(table, key, kind)
         else:
-            near = table.near(key, used)
+            near = nearest_known(key, used)
             table.error("unknown-key", key, f"is no key of a block given by {quoted(kind)}{near}")
 
 

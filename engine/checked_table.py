@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterable, Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -65,10 +65,6 @@ class CheckedTable:
         """Note a mistake of the table as a whole."""
         self.mistakes.error(code, self.place.where, self.place, sentence)
 
-    def near(self, name: str, known: Iterable[str]) -> str:
-        """A clause that names the nearest known name; empty where further mistakes are only counted."""
-        return "" if self.mistakes.full else nearest_known(name, known)
-
     def has(self, key: str) -> bool:
         """Whether the key is given."""
         return key in self.content
@@ -84,7 +80,7 @@ class CheckedTable:
         """Note every key that is not in ``known``; ``what`` names the table's kind, as in "a loop"."""
         for key in self.content:
             if key not in known:
-                self.error("unknown-key", key, f"is no key of {what}{self.near(key, known)}")
+                self.error("unknown-key", key, f"is no key of {what}{nearest_known(key, known)}")
 
     def number(self, key: str) -> Fraction | None:
         """A finite number, exactly as written."""

@@ -35,7 +35,8 @@ def read_bytes(path: Path, most_bytes: int) -> bytes:
         raise _unreadable(path, error) from None
     size = max(status.st_size, len(content))
     if size > most_bytes:
-        raise UnreadableFile("file-too-large", f"has {size / 2**20:.1f} MiB, and {most_bytes / 2**20:.0f} are read")
+        sentence = f"has {size / 2**20:.1f} MiB, and at most {most_bytes / 2**20:.0f} MiB are read"
+        raise UnreadableFile("file-too-large", sentence)
     return content
 
 

@@ -8,7 +8,7 @@ from typing import Final
 from encircle.engine.checked_table import CheckedTable
 from encircle.engine.declarations import LoopDeclaration
 from encircle.engine.mistakes import Place
-from encircle.engine.text import quoted
+from encircle.engine.text import nearest_known, quoted
 
 LIMITS: Final = (
     "gain_margin_db",
@@ -98,7 +98,7 @@ def _cut(table: CheckedTable, signals: Collection[str], others: Mapping[str, str
     if cut in others:
         table.error("cut-no-signal", "cut", f"is {quoted(cut)}, which is {others[cut]}; a loop is cut at a signal")
     else:
-        table.error("unknown-name", "cut", f"is {quoted(cut)}, and no signal has that name{table.near(cut, signals)}")
+        table.error("unknown-name", "cut", f"is {quoted(cut)}, and no signal has that name{nearest_known(cut, signals)}")
     return None
 
 

@@ -22,10 +22,9 @@ from encircle.engine.response_table import (
     SEPARATORS,
     Lines,
     ResponseFileError,
-    columns_of,
+    columns_below,
     split_lines,
     split_row,
-    split_rows,
 )
 from encircle.engine.text import listed, nearest_known, quoted
 
@@ -45,6 +44,8 @@ _SHOWN_FIELDS = 12
 _LARGEST_COHERENCE = 1.0001  # single-precision files round 1 upward
 
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+
+_NUMERIC = frozenset("0123456789+-.eE \t")
 
 _Floats = NDArray[np.float64]
 
@@ -71,10 +72,9 @@ def read_response(path: Path, file: str, columns: Mapping[str, str]) -> Measured
         raise ResponseFileError(error.code, f"the file {quoted(file)} {error.sentence}") from None
     lines = split_lines(text, file)
     separator, width, choice = _header(lines, columns)
-    rows = split_rows(lines, separator, width)
-    if len(rows) < 2:
+    if len(lines.texts) < 3:
         raise lines.error("too-few-lines", len(lines.texts) - 1, "the file ends with fewer than two lines of data")
-    values = _values(lines, rows, choice, separator != ",")
+    values = _values(lines, separator, width, choice)
     omega, H = _omega(lines, values, choice), _response(lines, values, choice)
     order = _ascending(lines, omega)
     coherence = _coherence(lines, values["coherence"])[order] if "coherence" in values else None
@@ -162,13 +162,13 @@ def _map_others(fields: Sequence[str]) -> str:
     return f"its columns are {listed(fields[:_SHOWN_FIELDS])}; say in `columns` which is which"
 
 
-def _values(lines: Lines, rows: Sequence[Sequence[str]], choice: _Choice, commas: bool) -> dict[str, _Floats]:
+def _values(lines: Lines, separator: str | None, width: int, choice: _Choice) -> dict[str, _Floats]:
     """The numbers of the columns to use."""
     keys = [choice.frequency, *choice.pair, *(["coherence"] if "coherence" in choice.positions else [])]
-    texts = columns_of(rows, [choice.positions[key] for key in keys])
-    if commas:
-        texts = _points_for_commas(lines, texts)
-    return {key: _numbers(lines, column, key) for key, column in zip(keys, texts, strict=True)}
+    columns = columns_below(lines, separator, width, [choice.positions[key] for key in keys])
+    if separator != ",":
+        columns = _points_for_commas(lines, columns)
+    return {key: _numbers(lines, column, key) for key, column in zip(keys, columns, strict=True)}
 
 
 def _points_for_commas(lines: Lines, columns: list[list[str]]) -> list[list[str]]:
@@ -190,10 +190,15 @@ def _first(columns: Sequence[Sequence[str]], character: str) -> int | None:
 
 
 def _numbers(lines: Lines, column: Sequence[str], key: str) -> _Floats:
-    if not all(map(_NUMBER.fullmatch, column)):
-        index = next(index for index, field in enumerate(column) if not _NUMBER.fullmatch(field))
-        raise lines.error("not-a-number", index + 1, f"`{key}` is {quoted(column[index])}, which is no finite number")
-    values = np.fromiter(map(float, column), dtype=np.float64, count=len(column))
+    """The column's values; only what is written with digits, sign, point and exponent is a number."""
+    try:
+        if not _NUMERIC.issuperset("".join(column)):
+            raise ValueError
+        values = np.fromiter(map(float, column), dtype=np.float64, count=len(column))
+    except ValueError:
+        index = next(index for index, field in enumerate(column) if not _NUMBER.fullmatch(field.strip()))
+        sentence = f"`{key}` is {quoted(column[index])}, which is no finite number"
+        raise lines.error("not-a-number", index + 1, sentence) from None
     _require(lines, np.isfinite(values), "number-range", f"`{key}` is too large for double precision")
     return values
 

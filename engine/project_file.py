@@ -20,12 +20,13 @@ from encircle.engine.loop_declarations import read_limits, read_loops
 from encircle.engine.mistakes import Mistakes, Place
 from encircle.engine.names import NamedThing, complaint_about, repeated, twice
 from encircle.engine.signal_equation import Vocabulary, names_in, parse_equation
-from encircle.engine.text import listed, one_line, printable, quoted
+from encircle.engine.text import listed, nearest_known, one_line, printable, quoted
 from encircle.engine.tokens import FormulaError
 from encircle.engine.toml_source import Source, read_source
 
 FORMAT: Final = 1
 FREQUENCY_UNITS: Final = ("Hz", "rad/s")
+_MOST_NAMES: Final = 2000
 _KEYS: Final = (
     "format",
     "title",
@@ -73,7 +74,7 @@ def _read(root: CheckedTable, source: Source, file: str, folder: Path) -> Declar
     title = root.text("title") if root.has("title") else ""
     unit = root.choice("frequency_unit", FREQUENCY_UNITS) if root.has("frequency_unit") else "Hz"
     inputs = _inputs(root)
-    tables = {key: root.table(key) if root.has(key) else None for key in _TABLES}
+    tables = {key: _table_of_names(root, key) for key in _TABLES}
     named = _named_things(inputs, tables)
     _check_names(root, named)
     parameters = _parameters(tables["parameters"])
@@ -97,7 +98,7 @@ def _read(root: CheckedTable, source: Source, file: str, folder: Path) -> Declar
         blocks=blocks,
         signals=signals,
         loops=loops,
-        warnings=root.mistakes.all_warnings(),
+        warnings=tuple(root.mistakes.warnings),
     )
 
 
@@ -108,6 +109,14 @@ def _inputs(root: CheckedTable) -> tuple[str, ...]:
         if not isinstance(value, str):
             root.error("not-a-text", "inputs", f"entry {place} must be a name in quotes, not {described(value)}")
     return tuple(texts)
+
+
+def _table_of_names(root: CheckedTable, key: str) -> CheckedTable | None:
+    table = root.table(key) if root.has(key) else None
+    if table and len(table.content) > _MOST_NAMES:
+        table.table_error("too-many", f"{len(table.content)} entries stand here, and {_MOST_NAMES} are read")
+        table.mistakes.raise_errors()
+    return table
 
 
 def _named_things(inputs: Iterable[str], tables: Mapping[str, CheckedTable | None]) -> list[NamedThing]:
@@ -186,7 +195,7 @@ def _unknown_names(table: CheckedTable, name: str, text: str, vocabulary: Vocabu
     unknown = [used for used in names_in(text) if not vocabulary.knows(used) and complaint_about(used) is None]
     known = [*vocabulary.sources, *vocabulary.blocks, *vocabulary.parameters]
     for used in unknown:
-        table.error("unknown-name", name, f"uses {quoted(used)}, which is defined nowhere{table.near(used, known)}")
+        table.error("unknown-name", name, f"uses {quoted(used)}, which is defined nowhere{nearest_known(used, known)}")
     return bool(unknown)
 
 

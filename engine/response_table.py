@@ -76,13 +76,26 @@ def split_row(lines: Lines, index: int, separator: str | None) -> list[str]:
     return [field.strip() for field in fields]
 
 
-def split_rows(lines: Lines, separator: str | None, width: int) -> list[list[str]]:
-    """The fields of every line below the header; raises ResponseFileError for a line without ``width`` fields."""
-    rows = [split_row(lines, index, separator) for index in range(1, len(lines.texts))]
-    for index, row in enumerate(rows, 1):
-        if len(row) != width:
-            raise lines.error("unequal-rows", index, _unequal(len(row), width, separator))
-    return rows
+def columns_below(lines: Lines, separator: str | None, width: int, positions: Sequence[int]) -> list[list[str]]:
+    """The fields of the columns at these positions, header left out; blanks round them may remain.
+
+    Raises ResponseFileError for a line that has not ``width`` fields.
+    """
+    texts = lines.texts[1:]
+    if any('"' in text for text in texts):
+        rows = [split_row(lines, index, separator) for index in range(1, len(lines.texts))]
+        _require_width(lines, [len(row) for row in rows], width, separator)
+        return [[row[position] for row in rows] for position in positions]
+    counts = [len(text.split()) if separator is None else text.count(separator) + 1 for text in texts]
+    _require_width(lines, counts, width, separator)
+    fields = (separator or " ").join(texts).split(separator)  # all lines have equal width: one split serves them all
+    return [fields[position::width] for position in positions]
+
+
+def _require_width(lines: Lines, counts: Sequence[int], width: int, separator: str | None) -> None:
+    for index, count in enumerate(counts, 1):
+        if count != width:
+            raise lines.error("unequal-rows", index, _unequal(count, width, separator))
 
 
 def _unequal(found: int, width: int, separator: str | None) -> str:
@@ -90,8 +103,3 @@ def _unequal(found: int, width: int, separator: str | None) -> str:
     if separator == "," and found > width:
         return sentence + "; with decimal commas the separator must be another"
     return sentence
-
-
-def columns_of(rows: Sequence[Sequence[str]], positions: Sequence[int]) -> list[list[str]]:
-    """The fields of the columns at these positions."""
-    return [[row[position] for row in rows] for position in positions]

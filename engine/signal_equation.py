@@ -22,6 +22,7 @@ from encircle.engine.text import nearest_known, quoted
 from encircle.engine.tokens import FormulaError, Token, TokenStream, tokenise
 
 _MOST_BITS = 4096
+_MOST_FACTORS = 100
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,11 +78,18 @@ def _term(stream: TokenStream, vocabulary: Vocabulary, negative: bool) -> Term:
     start = stream.next
     product = _Product(Fraction(-1 if negative else 1))
     _multiply(product, stream, vocabulary)
+    factors = 1
     while stream.comes("*", "/"):
+        factors += 1
+        if factors > _MOST_FACTORS:
+            sentence = f"a term has more than {_MOST_FACTORS} factors; give a part of it a name"
+            raise FormulaError(stream.next.position, sentence, "too-long")
         if stream.take().text == "*":
             _multiply(product, stream, vocabulary)
         else:
             _divide(product, stream, vocabulary)
+    if stream.comes("^"):
+        raise FormulaError(stream.next.position, "`^` can stand in the formula of a block only")
     if product.source is None:
         raise FormulaError(start.position, _without_signal(start, product), "constant-term")
     return Term(product.coefficient, tuple(product.blocks), product.source)

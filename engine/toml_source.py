@@ -14,7 +14,7 @@ from encircle.engine.errors import Problem, ProjectError
 from encircle.engine.file_access import UnreadableFile, decode, read_bytes
 from encircle.engine.text import printable, quoted
 
-MOST_BYTES = 2 * 2**20
+MOST_BYTES = 2**20
 _MOST_KEY_PARTS = 16
 _MOST_DIGITS = 4300  # of a whole number: the interpreter's own limit for decimal digits
 
