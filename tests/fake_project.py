@@ -9,6 +9,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from functools import cached_property
 from types import MappingProxyType
 
 import numpy as np
@@ -100,10 +101,10 @@ class FakeProject:
     def loop(self, name: str) -> LoopResult:
         if self.failing and any(gain != 1 for gain in self.gains.values()):
             raise ArithmeticError("the budget of cells is \x1b[31mspent[/bold]")
-        return self._results()[self.names.index(name)]
+        return self._results[self.names.index(name)]
 
     def check(self, names: Sequence[str] | None = None) -> Result:
-        loops = self._results()
+        loops = self._results
         failed = any(loop.verdict == "unstable" or any(f.met is False for f in loop.limits) for loop in loops)
         return Result(
             "encircle test", self.title, self.file, "0" * 64, (), "Hz", "fail" if failed else "pass",
@@ -120,6 +121,7 @@ class FakeProject:
         gains = {key: self.gains[given] for key, given in zip(LOOPS, self.names, strict=True)}
         return np.asarray(LOOPS[kind](2j * np.pi * frequency, gains), dtype=np.complex128)
 
+    @cached_property
     def _results(self) -> tuple[LoopResult, ...]:
         results = tuple(self._result(name) for name in self.names)
         return (*results[:-1], _undecided(results[-1])) if self.undecided else results

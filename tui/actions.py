@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 from enum import StrEnum
 
@@ -22,7 +21,8 @@ class Group(StrEnum):
 class Action:
     """``keys`` in Textual's spelling, ``description`` for the help page, ``short`` for the footer (empty: not there).
 
-    An ``urgent`` action works also while a value is being typed.
+    Where the footer lacks room those of high ``rank`` leave it. An action that is ``paired`` is the other way of the
+    one before and shares its line. An ``urgent`` action works also while a value is being typed.
     """
 
     id: str
@@ -30,55 +30,57 @@ class Action:
     description: str
     group: Group
     short: str = ""
+    rank: int = 2
+    paired: bool = False
     urgent: bool = False
 
 
 ACTIONS: tuple[Action, ...] = (
-    Action("outer_loop", ("down", "j"), "next loop outward", Group.LOOPS, "loop"),
-    Action("inner_loop", ("up", "k"), "next loop inward", Group.LOOPS),
-    Action("gain_up", ("plus", "equals_sign"), "raise the gain by 1 dB", Group.GAIN, "gain"),
-    Action("gain_down", ("minus", "underscore"), "lower the gain by 1 dB", Group.GAIN),
-    Action("gain_up_fine", ("full_stop", "greater_than_sign"), "raise the gain by 0.1 dB", Group.GAIN, "fine"),
-    Action("gain_down_fine", ("comma", "less_than_sign"), "lower the gain by 0.1 dB", Group.GAIN),
+    Action("outer_loop", ("down", "j"), "next loop outward", Group.LOOPS, "loop", 0),
+    Action("inner_loop", ("up", "k"), "inward", Group.LOOPS, paired=True),
+    Action("gain_up", ("plus", "equals_sign"), "gain 1 dB up", Group.GAIN, "gain", 0),
+    Action("gain_down", ("minus", "underscore"), "down", Group.GAIN, paired=True),
+    Action("gain_up_fine", ("full_stop", "greater_than_sign"), "gain 0.1 dB up", Group.GAIN, "fine"),
+    Action("gain_down_fine", ("comma", "less_than_sign"), "down", Group.GAIN, paired=True),
     Action("type_gain", ("g",), "type a gain: 1.5, x1.2 or +3 dB", Group.GAIN, "type"),
-    Action("put_back", ("r",), "put this loop's gain back to the file's", Group.GAIN, "put back"),
-    Action("put_all_back", ("R",), "put all gains back, forget the trial", Group.GAIN, "all"),
-    Action("cursor_right", ("right", "l"), "one step up in frequency", Group.CURSOR, "cursor"),
-    Action("cursor_left", ("left", "h"), "one step down in frequency", Group.CURSOR),
-    Action("cursor_far_right", ("shift+right", "L"), "ten steps up in frequency", Group.CURSOR),
-    Action("cursor_far_left", ("shift+left", "H"), "ten steps down in frequency", Group.CURSOR),
-    Action("next_mark", ("n",), "to the next crossing, crossover or margin", Group.CURSOR, "mark"),
-    Action("previous_mark", ("b",), "to the one before", Group.CURSOR),
-    Action("zoom_in", ("i",), "closer to −1", Group.PLOTS, "zoom"),
-    Action("zoom_out", ("o",), "further from −1; at the end the whole curve", Group.PLOTS),
-    Action("whole", ("w",), "the whole finite curve, or back near −1", Group.PLOTS),
-    Action("folded", ("f",), "fold the whole plane into a disc: arcs at infinity are seen", Group.PLOTS, "fold"),
-    Action("mirror", ("m",), "the mirrored half (negative frequencies)", Group.PLOTS, "mirror"),
-    Action("phase", ("p",), "phase below the magnitude", Group.PLOTS, "phase"),
-    Action("sensitivity", ("s",), "|S| beside |L|", Group.PLOTS, "S"),
-    Action("complementary", ("t",), "|T| beside |L|", Group.PLOTS, "T"),
-    Action("whole_band", ("a",), "all frequencies, or the band of the file", Group.PLOTS),
-    Action("panel_1", ("1",), "loops and the ladder of unstable poles", Group.PANELS),
+    Action("put_back", ("r",), "gain back to the file's", Group.GAIN, "put back"),
+    Action("put_all_back", ("R",), "all gains back, trial forgotten", Group.GAIN, "all"),
+    Action("cursor_right", ("right", "l"), "a step up in frequency", Group.CURSOR, "cursor", 0),
+    Action("cursor_left", ("left", "h"), "down", Group.CURSOR, paired=True),
+    Action("cursor_far_right", ("shift+right", "L"), "ten steps up", Group.CURSOR),
+    Action("cursor_far_left", ("shift+left", "H"), "down", Group.CURSOR, paired=True),
+    Action("next_mark", ("n",), "to the next mark", Group.CURSOR, "mark", 1),
+    Action("previous_mark", ("b",), "the one before", Group.CURSOR, paired=True),
+    Action("zoom_in", ("i",), "closer to −1", Group.PLOTS, "zoom", 1),
+    Action("zoom_out", ("o",), "further away", Group.PLOTS, paired=True),
+    Action("whole", ("w",), "whole curve, or near −1", Group.PLOTS, "whole"),
+    Action("folded", ("f",), "whole plane folded into a disc", Group.PLOTS, "fold"),
+    Action("mirror", ("m",), "mirrored half on or off", Group.PLOTS, "mirror"),
+    Action("phase", ("p",), "phase on or off", Group.PLOTS, "phase"),
+    Action("sensitivity", ("s",), "|S| on or off", Group.PLOTS, "|S|"),
+    Action("complementary", ("t",), "|T| on or off", Group.PLOTS, "|T|"),
+    Action("whole_band", ("a",), "all frequencies, or the band", Group.PLOTS),
+    Action("panel_1", ("1",), "loops and their unstable poles", Group.PANELS, "…6 panels", 0),
     Action("panel_2", ("2",), "room: margins against limits", Group.PANELS),
-    Action("panel_3", ("3",), "turns round −1: the count and its evidence", Group.PANELS),
+    Action("panel_3", ("3",), "turns round −1: the count", Group.PANELS),
     Action("panel_4", ("4",), "L in the plane", Group.PANELS),
     Action("panel_5", ("5",), "L over frequency", Group.PANELS),
-    Action("panel_6", ("6",), "notes: warnings, data files, hidden poles, gain ranges", Group.PANELS),
-    Action("next_panel", ("tab",), "choose the next panel", Group.PANELS, "panel"),
-    Action("full_size", ("enter", "z"), "the chosen panel on the whole screen, and back", Group.PANELS, "full size"),
-    Action("scroll_down", ("pagedown", "space"), "further down in the chosen panel", Group.PANELS),
-    Action("scroll_up", ("pageup", "backspace"), "back up", Group.PANELS),
-    Action("back", ("escape",), "leave the help page, the full-size panel or the typing of a value", Group.PANELS),
-    Action("help", ("question_mark", "f1"), "this page", Group.PROGRAM, "help"),
-    Action("quit", ("q", "ctrl+c", "ctrl+q"), "quit; trial gains are kept for the next start", Group.PROGRAM, "quit", True),
-    Action("suspend", ("ctrl+z",), "pause; fg brings the screen back", Group.PROGRAM, urgent=True),
+    Action("panel_6", ("6",), "notes: warnings, data, the rest", Group.PANELS),
+    Action("next_panel", ("tab",), "the next panel", Group.PANELS),
+    Action("full_size", ("enter", "z"), "panel at full size, and back", Group.PANELS, "full size", 1),
+    Action("scroll_down", ("space", "pagedown"), "scroll down", Group.PANELS),
+    Action("scroll_up", ("backspace", "pageup"), "up", Group.PANELS, paired=True),
+    Action("back", ("escape",), "leave help, full size, typing", Group.PANELS),
+    Action("help", ("question_mark", "f1"), "this page", Group.PROGRAM, "help", 0),
+    Action("quit", ("q", "ctrl+c", "ctrl+q"), "quit; the trial is kept", Group.PROGRAM, "quit", 0, urgent=True),
+    Action("suspend", ("ctrl+z",), "pause; fg comes back", Group.PROGRAM, urgent=True),
 )
 
 _KEY_NAMES = {
-    "plus": "+", "equals_sign": "=", "minus": "-", "underscore": "_", "full_stop": ".", "comma": ",",
-    "greater_than_sign": ">", "less_than_sign": "<", "question_mark": "?", "pagedown": "page down", "pageup": "page up",
-    "escape": "esc", "down": "↓", "up": "↑", "left": "←", "right": "→", "shift+left": "shift ←",
-    "shift+right": "shift →", "f1": "F1",
+    "plus": "+", "minus": "-", "equals_sign": "=", "underscore": "_", "full_stop": ".", "comma": ",",
+    "greater_than_sign": ">", "less_than_sign": "<", "question_mark": "?", "pagedown": "pgdn", "pageup": "pgup",
+    "backspace": "bksp", "escape": "esc", "down": "↓", "up": "↑", "left": "←", "right": "→", "shift+left": "⇧←",
+    "shift+right": "⇧→", "f1": "F1",
 }  # fmt: skip
 
 
@@ -89,22 +91,30 @@ def key_name(key: str) -> str:
 
 def key_names(action: Action) -> str:
     """All keys of an action."""
-    return "  ".join(key_name(key) for key in action.keys)
+    return " ".join(key_name(key) for key in action.keys)
 
 
-def in_group(group: Group) -> tuple[Action, ...]:
-    """The actions of one group, in order."""
-    return tuple(action for action in ACTIONS if action.group is group)
-
-
-def footer_entries(actions: Iterable[Action] = ACTIONS) -> tuple[tuple[str, str], ...]:
-    """Keys and words of the footer: an action without a word of its own lends its key to the one before."""
+def help_entries(group: Group) -> tuple[tuple[str, str], ...]:
+    """Keys and words of one group, an action and its other way together."""
     entries: list[tuple[str, str]] = []
-    paired = {"inner_loop", "gain_down", "gain_down_fine", "cursor_left", "previous_mark", "zoom_out"}
-    for action in actions:
-        if action.short:
-            entries.append((key_name(action.keys[0]), action.short))
-        elif action.id in paired:
-            keys, word = entries[-1]
-            entries[-1] = (keys + key_name(action.keys[0]), word)
+    for action in ACTIONS:
+        if action.group is not group:
+            continue
+        if action.paired:
+            keys, words = entries.pop()
+            entries.append((f"{keys}  {key_names(action)}", f"{words} / {action.description}"))
+        else:
+            entries.append((key_names(action), action.description))
     return tuple(entries)
+
+
+def footer_entries() -> tuple[tuple[str, str], ...]:
+    """First keys and short words, an action and its other way together; the least important last."""
+    shown = sorted((action for action in ACTIONS if action.short), key=lambda action: action.rank)
+    return tuple((_footer_keys(action), action.short) for action in shown)
+
+
+def _footer_keys(action: Action) -> str:
+    following = ACTIONS[ACTIONS.index(action) + 1 :][:1]
+    both = (action, *(other for other in following if other.paired))
+    return "".join(key_name(one.keys[0]) for one in both)

@@ -15,7 +15,7 @@ from encircle.tui import terminal_session
 from textual.app import App, ComposeResult
 from textual.binding import Binding, BindingType
 from textual.events import Resize
-from textual.geometry import Region
+from textual.geometry import Region, Size
 from textual.message import Message
 from textual.widgets import Input
 
@@ -26,7 +26,7 @@ from encircle.tui.gain_entry import WANTED, typed_gain
 from encircle.tui.line_panel import LinePanel
 from encircle.tui.loop_ladder import gain_change
 from encircle.tui.palette import colour_wanted, palette
-from encircle.tui.panels import Showing, panel_rows, text_rows
+from encircle.tui.panels import Showing, panel_rows, signature, text_rows
 from encircle.tui.picture import LoopProject, Picture
 from encircle.tui.recount import Recounter, SupersededError, picture_of
 from encircle.tui.screen_layout import Placement, arrange
@@ -77,7 +77,9 @@ class EncircleApp(App[int]):
         self._picture: Picture | None = None
         self._recounter = Recounter()
         self._answer: Future[Picture] | None = None
+        self._shown: dict[Panel, tuple[object, ...]] = {}
         self._notice = ""
+        self._extent = Size(80, 24)
         self._stop_listening: Callable[[], None] = lambda: None
         self._handlers: Mapping[str, Callable[[], None]] = self._all_handlers()
 
@@ -132,6 +134,7 @@ class EncircleApp(App[int]):
 
     def on_resize(self, event: Resize) -> None:
         """Every panel at its new place."""
+        self._extent = event.size
         self._draw()
 
     def _leave(self, status: int) -> None:
@@ -251,11 +254,11 @@ class EncircleApp(App[int]):
         entry.value = ""
         now, filed = self._trial.gain(self._loop_name, self._filed_gain), self._filed_gain
         hint = f"gain of {self._loop_name}, now {rounded(now)}, file {as_declared(filed)}: {WANTED}"
-        entry.placeholder = Sheet(self.size.width, ascii_only=self._ascii_only).clean(hint)
-        entry.styles.offset = (0, self.size.height - 1)
-        entry.styles.width = self.size.width
+        entry.placeholder = Sheet(self._extent.width, ascii_only=self._ascii_only).clean(hint)
+        entry.styles.offset = (0, self._extent.height - 1)
+        entry.styles.width = self._extent.width
         entry.display = True
-        entry.focus()
+        self.screen.set_focus(entry)
 
     def _close_entry(self) -> None:
         self.query_one("#entry", Input).display = False
@@ -275,6 +278,11 @@ class EncircleApp(App[int]):
             self._draw()
 
     # ---- counting --------------------------------------------------------------------------------------------------
+
+    @property
+    def counting(self) -> bool:
+        """Whether a count is under way."""
+        return self._answer is not None
 
     def _count(self) -> None:
         """Ask for a new picture; a quick one is waited for, so that the key and its result are one frame."""
@@ -312,12 +320,10 @@ class EncircleApp(App[int]):
     def _showing(self) -> Showing | None:
         if self._picture is None:
             return None
-        return Showing(
-            self._picture, self._view, self._project.declarations, self._project.band, self._ascii_only
-        )
+        return Showing(self._picture, self._view, self._project.declarations, self._project.band, self._ascii_only)
 
     def _places(self) -> tuple[Placement, ...]:
-        width, height = self.size
+        width, height = self._extent
         return arrange(width, height, self._view, len(self._project.loop_names))
 
     def _place_of_chosen(self) -> Placement:
@@ -326,7 +332,7 @@ class EncircleApp(App[int]):
 
     def _draw(self) -> None:
         """Every row of the screen from the present picture; the widgets repaint what differs."""
-        width, height = self.size
+        width, height = self._extent
         showing = self._showing()
         places = {place.panel: place for place in self._places()}
         for panel in Panel:
@@ -334,26 +340,33 @@ class EncircleApp(App[int]):
             place = places.get(panel) if showing is not None else None
             widget.place(Region(place.x, place.y, place.width, place.height) if place is not None else None)
             if showing is not None and place is not None:
-                widget.show(panel_rows(place, showing))
+                self._show_panel(widget, place, showing)
         self._draw_line("title", 0, self._title(width))
         if showing is not None:
-            self._draw_line("readout", height - 2, readout_row(showing.picture, self._view, width, ascii_only=self._ascii_only))
+            readout = readout_row(showing.picture, self._view, width, ascii_only=self._ascii_only)
+            self._draw_line("readout", height - 2, readout)
         self._draw_line("footer", height - 1, footer_row(width, notice=self._notice, ascii_only=self._ascii_only))
+
+    def _show_panel(self, widget: LinePanel, place: Placement, showing: Showing) -> None:
+        """Rows are made again only where something that they depend on has changed."""
+        wanted = signature(place, showing)
+        if self._shown.get(place.panel) != wanted:
+            self._shown[place.panel] = wanted
+            widget.show(panel_rows(place, showing))
 
     def _draw_line(self, name: str, y: int, row: Row) -> None:
         widget = self._line_panel(name)
-        widget.place(Region(0, y, self.size.width, 1))
+        widget.place(Region(0, y, self._extent.width, 1))
         widget.show((row,))
 
     def _line_panel(self, name: str) -> LinePanel:
         return self.query_one(f"#{name}", LinePanel)
 
     def _title(self, width: int) -> Row:
-        counting = self._answer is not None
         if self._picture is not None:
-            return title_row(self._picture, width, counting=counting, ascii_only=self._ascii_only)
+            return title_row(self._picture, width, counting=self.counting, ascii_only=self._ascii_only)
         sheet = Sheet(width, ascii_only=self._ascii_only)
-        words = ("  counting …" if counting else "  nothing could be counted", Ink.DOUBT)
+        words = ("  counting …" if self.counting else "  nothing could be counted", Ink.DOUBT)
         sheet.row(" ", (self._project.declarations.title, Ink.STRONG), words)
         return sheet.rows[0]
 

@@ -7,19 +7,16 @@ from rich.cells import cell_len
 from encircle.tui.actions import footer_entries
 from encircle.tui.sheet import Ink, Piece, Row, Sheet
 
-_FIRST = ("help", "quit")
-
 
 def footer_row(width: int, *, notice: str = "", ascii_only: bool = False) -> Row:
-    """Help and quit always; then as many of the others as there is room for."""
+    """The most important keys first, as many as there is room for."""
     sheet = Sheet(width, ascii_only=ascii_only)
     if notice:
         sheet.row((f" {notice}", Ink.DOUBT))
         return sheet.rows[0]
-    entries = sorted(footer_entries(), key=lambda entry: entry[1] not in _FIRST)
     pieces: list[Piece] = []
     used = 0
-    for keys, word in entries:
+    for keys, word in footer_entries():
         used += cell_len(sheet.clean(keys)) + cell_len(word) + 3
         if used > width:
             break

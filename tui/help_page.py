@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-from encircle.tui.actions import Group, in_group, key_names
+from encircle.tui.actions import Group, help_entries
 from encircle.tui.sheet import Ink, Row, Sheet, fitted, padded
 from encircle.tui.terms import TERMS
 from encircle.tui.wording import CAUTION
 
 TITLE = "Keys and terms"
 TWO_COLUMNS_FROM = 110
-_KEY_WIDTH = 18
-_TERM_WIDTH = 15
+_KEYS_COLUMN = 56
+_KEY_WIDTH = 21
+_TERM_WIDTH = 12
 
 
 def help_rows(width: int, *, ascii_only: bool = False) -> tuple[Row, ...]:
@@ -20,7 +21,7 @@ def help_rows(width: int, *, ascii_only: bool = False) -> tuple[Row, ...]:
     if width < TWO_COLUMNS_FROM:
         body = (*_keys(width, ascii_only), *_terms(width, ascii_only))
     else:
-        left = width * 45 // 100
+        left = _KEYS_COLUMN
         body = _beside(_keys(left, ascii_only), left, _terms(width - left, ascii_only), width - left)
     return (*head.rows, *body)
 
@@ -36,8 +37,8 @@ def _keys(width: int, ascii_only: bool) -> tuple[Row, ...]:
     sheet = Sheet(width, ascii_only=ascii_only)
     for group in Group:
         sheet.row((f" {group.value}", Ink.STRONG))
-        for action in in_group(group):
-            _entry(sheet, key_names(action), action.description, _KEY_WIDTH, Ink.KEY)
+        for keys, words in help_entries(group):
+            _entry(sheet, keys, words, _KEY_WIDTH, Ink.KEY)
     return sheet.rows
 
 

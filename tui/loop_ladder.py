@@ -7,23 +7,25 @@ that creates one starts a strand (``┬``), and what still hangs below the outer
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
+
+from rich.cells import cell_len
 
 from encircle.engine.result import LoopResult
+from encircle.tui.margin_names import short_finding
 from encircle.tui.picture import Picture
-from encircle.tui.sheet import Ink, Piece, Row, Run, Sheet, padded
+from encircle.tui.sheet import Ink, Piece, Row, Run, Sheet, padded, row_width
 from encircle.tui.tightest_limit import missed_limits, tightest_limit
 from encircle.tui.wording import (
-    LIMIT_WORDS,
     VERDICT_WORDS,
     count_or_unknown,
-    limit_found,
-    limit_required,
     plural,
 )
 
 TITLE = "Loops, inside to outside"
 MOST_STRANDS = 5
-_NAME_WIDTH = 20
+_MOST_NAME = 24
+_TRIAL_WIDTH = len(" +00.00 dB ")
 _VERDICT_WIDTH = max(map(len, VERDICT_WORDS.values())) + 2
 VERDICT_INK = {"stable": Ink.GOOD, "as_declared": Ink.GOOD, "unstable": Ink.ALARM, "undecided": Ink.DOUBT}
 
@@ -45,9 +47,9 @@ def ladder_rows(
     strands = _strand_width(picture)
     _end_row(sheet, "all open", picture.now.unstable_poles_all_open, strands)
     for number in _shown(len(loops), picture.chosen, height - 3, 2 if roomy else 1):
-        _loop_row(sheet, picture, number, strands)
+        told = _loop_row(sheet, picture, number, strands)
         if roomy:
-            _second_row(sheet, picture, number, strands)
+            _second_row(sheet, picture, number, strands, [] if told else _trial_mark(picture, number))
     _end_row(sheet, "all closed", picture.now.unstable_poles_all_closed, strands)
     return sheet.rows[:height]
 
@@ -82,28 +84,43 @@ def _end_row(sheet: Sheet, label: str, count: int | None, width: int) -> None:
     sheet.row("    ", (drawn, Ink.BAD), (f"{label}: ", Ink.QUIET), (words, ink))
 
 
-def _loop_row(sheet: Sheet, picture: Picture, number: int, width: int) -> None:
+def _loop_row(sheet: Sheet, picture: Picture, number: int, width: int) -> bool:
+    """The loop's own row; whether its trial gain had room there."""
     loop = picture.now.loops[number]
     chosen = number == picture.chosen
     name_ink = Ink.CHOSEN if chosen else Ink.STRONG
-    name_width = max(8, min(_NAME_WIDTH, sheet.width - 24 - width))
+    names = _name_width(sheet, picture, width)
     before, after = loop.unstable_poles_before, loop.unstable_poles_after
-    count_ink = Ink.BAD if loop.verdict == "unstable" else Ink.PLAIN
-    sheet.row(
-        (f"{'►' if chosen else ' '}{number + 1:>2} ", name_ink),
+    verdict = VERDICT_WORDS[loop.verdict]
+    left: list[Piece] = [
+        (f"{'►' if chosen else ' '}{number + 1:>2}", name_ink),
+        ("*" if number in picture.changed else " ", Ink.TRIAL),
         (strands(before, after).ljust(width), Ink.BAD),
-        (padded(sheet.clean(loop.name), name_width), name_ink),
-        " ",
-        (VERDICT_WORDS[loop.verdict], VERDICT_INK[loop.verdict]),
-        " " * (_VERDICT_WIDTH - len(VERDICT_WORDS[loop.verdict])),
-        (f"{count_or_unknown(before)} → {count_or_unknown(after)}", count_ink),
-        *_trial(loop, picture.filed.loops[number]),
-    )
+        (padded(sheet.clean(loop.name), names), name_ink),
+        "  ",
+        (verdict, VERDICT_INK[loop.verdict]),
+        " " * (_VERDICT_WIDTH - len(verdict)),
+        (
+            f"{count_or_unknown(before)} → {count_or_unknown(after)}",
+            Ink.BAD if loop.verdict == "unstable" else Ink.PLAIN,
+        ),
+    ]
+    has_room = row_width(sheet.runs(left)) + _TRIAL_WIDTH <= sheet.width
+    sheet.split_row(left, _trial_mark(picture, number) if has_room else [])
+    return has_room
 
 
-def _trial(loop: LoopResult, filed: LoopResult) -> list[Piece]:
-    """The mark of a trial gain: its size against the file's in dB."""
-    return [] if loop.gain == filed.gain else ["  ", (f"gain {gain_change(loop.gain, filed.gain)}", Ink.TRIAL)]
+def _trial_mark(picture: Picture, number: int) -> list[Piece]:
+    """The change of a gain on trial against the file's."""
+    if number not in picture.changed:
+        return []
+    return [(f" {gain_change(picture.now.loops[number].gain, picture.filed.loops[number].gain)} ", Ink.TRIAL)]
+
+
+def _name_width(sheet: Sheet, picture: Picture, strands_width: int) -> int:
+    """As long as the longest name, as far as there is room; names give way first."""
+    longest = max(cell_len(sheet.clean(loop.name)) for loop in picture.now.loops)
+    return max(min(longest, _MOST_NAME, sheet.width - 25 - strands_width), 6)
 
 
 def gain_change(gain: float, filed: float) -> str:
@@ -111,25 +128,28 @@ def gain_change(gain: float, filed: float) -> str:
     return f"{20 * math.log10(gain / filed):+.2f} dB"
 
 
-def _second_row(sheet: Sheet, picture: Picture, number: int, width: int) -> None:
+def _second_row(sheet: Sheet, picture: Picture, number: int, width: int, trial: Sequence[Piece]) -> None:
     loop = picture.now.loops[number]
     after = loop.unstable_poles_after
-    sheet.row("    ", (strands(after, after).ljust(width), Ink.BAD), *least_room(loop, picture.now.frequency_unit))
+    left: list[Piece] = ["    ", (strands(after, after).ljust(width), Ink.BAD)]
+    sheet.split_row([*left, *least_room(loop, picture.now.frequency_unit)], trial)
 
 
 def least_room(loop: LoopResult, frequency_unit: str) -> list[Run]:
     """The tightest limit in words; missed ones first."""
     if loop.verdict == "undecided":
         return [(f"undecided: {loop.undecided[0].why}" if loop.undecided else "undecided", Ink.DOUBT)]
-    finding = tightest_limit(loop)
     if loop.verdict == "unstable":
-        return [("unstable: no margin is left", Ink.BAD)]
+        return [("unstable: no room is left", Ink.BAD)]
+    finding = tightest_limit(loop)
     if finding is None:
         return [("no limits set", Ink.QUIET)]
-    words = f"{LIMIT_WORDS[finding.name].quantity} {limit_found(finding, frequency_unit)}"
-    required = limit_required(finding, frequency_unit)
+    words = short_finding(finding, frequency_unit)
     missed = missed_limits(loop)
     if missed:
-        return [(f"MISSED {len(missed)} of {len(loop.limits)}", Ink.ALARM), (f" {words}, {required}", Ink.BAD)]
-    return [(f"tightest: {words}, {required}", Ink.PLAIN)]
+        return [("MISSED", Ink.ALARM), (f" {words}{_and_more(len(missed) - 1)}", Ink.BAD)]
+    return [(words, Ink.PLAIN), ("  least room", Ink.QUIET)]
 
+
+def _and_more(others: int) -> str:
+    return f" and {others} more" if others else ""

@@ -8,26 +8,12 @@ from __future__ import annotations
 import math
 
 from encircle.engine.result import LoopResult
-from encircle.tui.margin_table import NO_LIMIT as NO_FINITE_LIMIT
+from encircle.tui.margin_names import SHORT_NAMES, short_required, short_value
 from encircle.tui.margin_table import MarginRow, margin_rows
 from encircle.tui.sheet import Ink, Row, Run, Sheet
 from encircle.tui.tightest_limit import missed_limits
-from encircle.tui.wording import limit_required
 
 TITLE = "Room"
-NO_LIMIT = "∞"
-_QUANTITIES = {
-    "gain_margin_db": "gain both",
-    "gain_increase_db": "gain up",
-    "gain_decrease_db": "gain down",
-    "phase_margin_deg": "phase",
-    "delay_margin_s": "delay",
-    "modulus_margin": "modulus",
-    "sensitivity_peak_db": "peak |S|",
-    "complementary_peak_db": "peak |T|",
-    "crossover_min": "crossover",
-    "crossover_max": "highest",
-}
 _STATUS: dict[bool | None, Run] = {
     True: ("met", Ink.GOOD),
     False: ("MISSED", Ink.ALARM),
@@ -75,27 +61,18 @@ def _cells(row: MarginRow, before: MarginRow | None, trend: str, unit: str) -> l
     """Status, quantity, value, trend, addition, limit, value in the file, place."""
     status = _STATUS[row.finding.met] if row.finding is not None else ("", Ink.PLAIN)
     changed = before is not None and before.quantity.value != row.quantity.value
-    limit = _in_signs(limit_required(row.finding, unit)) if row.finding is not None else ""
-    filed = f"file {_short(before.quantity.value)}" if before is not None and changed else ""
+    limit = short_required(row.finding, unit) if row.finding is not None else ""
+    filed = f"file {short_value(before.quantity.value)}" if before is not None and changed else ""
     return [
         status,
-        (_QUANTITIES[row.name], Ink.PLAIN),
-        (_short(row.quantity.value), Ink.TRIAL if changed else Ink.STRONG),
+        (SHORT_NAMES[row.name], Ink.PLAIN),
+        (short_value(row.quantity.value), Ink.TRIAL if changed else Ink.STRONG),
         (trend if changed else "", Ink.TRIAL),
         (row.quantity.addition, Ink.QUIET),
         (limit, Ink.PLAIN),
-        (filed, Ink.TRIAL),
+        (filed, Ink.QUIET),
         (row.quantity.place, Ink.QUIET),
     ]
-
-
-def _short(value: str) -> str:
-    return NO_LIMIT if value == NO_FINITE_LIMIT else value
-
-
-def _in_signs(limit: str) -> str:
-    """A limit in less room: ``≥ 45°`` for ``at least 45°``."""
-    return limit.replace("at least", "≥").replace("at most", "≤")
 
 
 def _sizes(loop: LoopResult) -> dict[str, float]:

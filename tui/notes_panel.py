@@ -1,11 +1,11 @@
-"""What else is known: warnings, hidden poles, gain ranges, data files, notes from the file, the caution."""
+"""What else is known: warnings, hidden poles, data files, notes from the file, the caution."""
 
 from __future__ import annotations
 
 from encircle.engine.declarations import Declarations
-from encircle.engine.result import GainRange, HiddenPole, LoopResult, Result
+from encircle.engine.result import HiddenPole, LoopResult, Result
 from encircle.tui.sheet import Ink, Row, Sheet
-from encircle.tui.wording import CAUTION, complex_pair, frequency, rounded_towards_one
+from encircle.tui.wording import CAUTION, complex_pair, frequency
 
 TITLE = "Notes"
 
@@ -27,7 +27,6 @@ def notes_rows(
         sheet.paragraph(f"HIDDEN unstable pole: {_hidden(pole)}; no feedback moves it", Ink.BAD, hanging=3)
     for warning in result.warnings:
         sheet.paragraph(f"! {warning}", Ink.DOUBT, hanging=3)
-    _gain_ranges(sheet, loop)
     _parts(sheet, result, loop)
     _data_files(sheet, result)
     _block_notes(sheet, loop, declarations)
@@ -42,19 +41,6 @@ def _tally(result: Result) -> str:
 
 def _hidden(pole: HiddenPole) -> str:
     return f"{pole.block}, {complex_pair(pole.pole)}" if pole.pole is not None else f"{pole.block}, as declared"
-
-
-def _gain_ranges(sheet: Sheet, loop: LoopResult) -> None:
-    """Z over the factor on top of the loop's gain."""
-    if loop.gain_ranges:
-        ranges = "; ".join(_range(item) for item in loop.gain_ranges)
-        sheet.paragraph(f"{loop.name}, factor on its gain: {ranges}", hanging=3)
-
-
-def _range(item: GainRange) -> str:
-    lower = "0" if item.lower == 0 else rounded_towards_one(item.lower)
-    span = f"above {lower}" if item.upper is None else f"{lower} to {rounded_towards_one(item.upper)}"
-    return f"{span}: Z {item.unstable_poles}"
 
 
 def _parts(sheet: Sheet, result: Result, loop: LoopResult) -> None:

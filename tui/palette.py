@@ -43,7 +43,7 @@ _LOOKS: Mapping[Ink | Role, tuple[str, str]] = {
     Role.DIRECTION: ("green", "bold"),
     Role.MARGIN: ("yellow", "bold"),
     Role.CROSSOVER: ("yellow", "bold"),
-    Role.CURSOR: ("", "bold reverse"),
+    Role.CURSOR: ("", "bold"),
     Role.CRITICAL: ("red", "bold"),
 }
 

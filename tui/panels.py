@@ -30,6 +30,14 @@ class Showing:
     ascii_only: bool = False
 
 
+def signature(place: Placement, showing: Showing) -> tuple[object, ...]:
+    """Equal as long as the panel's rows are: texts do not follow the cursor and the switches of the plots."""
+    view = showing.view
+    if place.panel.is_plot:
+        return place, showing.picture, view
+    return place, showing.picture, view.panel is place.panel, view.scroll
+
+
 def panel_rows(place: Placement, showing: Showing) -> tuple[Row, ...]:
     """The rows of one panel, at most as many as its place has."""
     picture, view = showing.picture, showing.view

@@ -30,9 +30,9 @@ class LoopProject(Protocol):
     def with_gain(self, name: str, gain: float) -> LoopProject: ...
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Picture:
-    """One consistent set of results.
+    """One consistent set of results; a picture equals only itself.
 
     ``filed`` holds the results of the file as it is, ``now`` those with the trial gains; ``curve`` is that of the
     chosen loop now, ``curve_before`` the file's where it differs, else ``None``.

@@ -60,13 +60,13 @@ class Sheet:
 
     def row(self, *pieces: Piece) -> None:
         """One row, cut with an ellipsis where it is too long."""
-        self._rows.append(fitted([self._run(piece) for piece in pieces], self.width, self.ascii_only))
+        self._rows.append(fitted(self.runs(pieces), self.width, self.ascii_only))
 
     def split_row(self, left: Sequence[Piece], right: Sequence[Piece]) -> None:
         """One row with ``right`` flush right; ``left`` is cut where both do not fit."""
-        ending = [self._run(piece) for piece in right]
+        ending = self.runs(right)
         room = max(self.width - row_width(ending), 0)
-        start = fitted([self._run(piece) for piece in left], room, self.ascii_only) if room else ()
+        start = fitted(self.runs(left), room, self.ascii_only) if room else ()
         self._rows.append(fitted([*start, *ending], self.width, self.ascii_only))
 
     def heading(self, key: str, title: str, *, chosen: bool = False) -> None:
@@ -96,7 +96,7 @@ class Sheet:
 
         Rows numbered in ``reverse`` take the ink of their first cell over their whole width.
         """
-        cells = [[self._run(cell) for cell in line] for line in lines]
+        cells = [self.runs(line) for line in lines]
         widths = [max((cell_len(line[k][0]) for line in cells), default=0) for k in range(len(align))]
         kept = _columns_that_fit(widths, gap, self.width - 1, optional)
         marked = frozenset(reverse)
@@ -109,6 +109,10 @@ class Sheet:
     def blank(self) -> None:
         """An empty row."""
         self.row("")
+
+    def runs(self, pieces: Iterable[Piece]) -> list[Run]:
+        """Pieces made harmless."""
+        return [self._run(piece) for piece in pieces]
 
     def _run(self, piece: Piece) -> Run:
         text, ink = (piece, Ink.PLAIN) if isinstance(piece, str) else piece
@@ -147,9 +151,9 @@ def fitted(runs: Sequence[tuple[str, Ink | Role]], width: int, ascii_only: bool 
     return _merged(kept)
 
 
-def window(rows: tuple[Row, ...], height: int, offset: int = 0, *, more_key: str = "", kept: int = 1) -> tuple[Row, ...]:
-    """``height`` rows from ``offset`` on, the first ``kept`` always on top; what is left out is said in the last row."""
-    head, body = rows[:kept], rows[kept:]
+def window(rows: tuple[Row, ...], height: int, offset: int = 0, *, more_key: str = "") -> tuple[Row, ...]:
+    """``height`` rows from ``offset`` on, the heading always on top; what is left out is said in the last row."""
+    head, body = rows[:1], rows[1:]
     room = height - len(head)
     if len(body) <= room or room <= 0:
         return rows[:height]
@@ -214,9 +218,7 @@ def _broken(text: str, width: int) -> list[str]:
     return lines if lines[0] or len(lines) == 1 else lines[1:]
 
 
-_ONE_CELL_ASCII = str.maketrans(
-    {"►": ">", "│": "|", "┴": "^", "┬": "v", "─": "-", "▲": "^", "▼": "v", "→": ">", "←": "<", "↑": "^", "↓": "v"}
-)  # fmt: skip
+_ONE_CELL_ASCII = str.maketrans("►│┴┬─▲▼→←↑↓⇧●", ">|^v-^v><^v^@")
 
 
 def _plain_ascii(text: str) -> str:

@@ -6,9 +6,11 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 from enum import Enum
 from functools import partial
+from typing import Literal
 
 from encircle.tui.polar_plot import PolarView
 
+Kind = Literal["whole", "near", "folded"]
 LEAST_ZOOM, MOST_ZOOM = -6, 20
 
 
@@ -93,16 +95,16 @@ def zoom(view: View, step: int) -> View:
     plane = view.plane
     if plane.kind == "near":
         level = plane.zoom + step
-        kind = "whole" if level < LEAST_ZOOM else "near"
+        kind: Kind = "whole" if level < LEAST_ZOOM else "near"
         return replace(view, plane=replace(plane, kind=kind, zoom=min(max(level, LEAST_ZOOM), MOST_ZOOM)))
     level = LEAST_ZOOM if plane.kind == "whole" else plane.zoom
     return replace(view, plane=replace(plane, kind="near", zoom=level)) if step > 0 else view
 
 
-def toggle_plane(view: View, kind: str) -> View:
+def toggle_plane(view: View, kind: Kind) -> View:
     """The folded or the whole plane, or back to the neighbourhood of -1."""
-    wanted = "near" if view.plane.kind == kind else kind
-    return replace(view, plane=replace(view.plane, kind=wanted))  # type: ignore[arg-type]
+    wanted: Kind = "near" if view.plane.kind == kind else kind
+    return replace(view, plane=replace(view.plane, kind=wanted))
 
 
 def toggle_mirror(view: View) -> View:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from encircle.engine.result import LoopResult, PoleOwner, RealAxisCrossing
+from encircle.engine.result import GainRange, LoopResult, PoleOwner, RealAxisCrossing
 from encircle.tui.loop_ladder import VERDICT_INK
 from encircle.tui.sheet import Ink, Row, Run, Sheet
 from encircle.tui.wording import (
@@ -32,6 +32,7 @@ def windings_rows(
     _owners(sheet, loop)
     _axis_poles(sheet, loop, frequency_unit)
     _evidence(sheet, loop)
+    _gain_ranges(sheet, loop)
     return sheet.rows
 
 
@@ -88,7 +89,8 @@ def _with_running_sum(crossings: Sequence[RealAxisCrossing], unit: str) -> list[
     for crossing in crossings:
         total += crossing.turns
         direction = "clockwise" if crossing.turns > 0 else "anticlockwise"
-        cells = (frequency(crossing.frequency, unit), _value(crossing), signed(crossing.turns), signed(total), direction)
+        place = frequency(crossing.frequency, unit)
+        cells = (place, _value(crossing), signed(crossing.turns), signed(total), direction)
         lines.append([(text, Ink.PLAIN) for text in cells])
     return lines
 
@@ -116,7 +118,7 @@ def _owner(owner: PoleOwner) -> str:
 def _axis_poles(sheet: Sheet, loop: LoopResult, unit: str) -> None:
     if loop.axis_poles_left:
         poles = ", ".join(f"{pole.block} at {frequency(pole.frequency, unit)}" for pole in loop.axis_poles_left)
-        sheet.paragraph(f"left on the axis: {poles}", Ink.DOUBT, hanging=3)
+        sheet.paragraph(f"left on the axis: {poles}", hanging=3)
 
 
 def _evidence(sheet: Sheet, loop: LoopResult) -> None:
@@ -124,3 +126,15 @@ def _evidence(sheet: Sheet, loop: LoopResult) -> None:
     sheet.paragraph(f"evidence: {loop.evidence}; {EVIDENCE_WORDS[loop.evidence]}", ink, hanging=3)
     for assumption in loop.assumptions:
         sheet.paragraph(f"· {assumption}", Ink.PLAIN, hanging=3)
+
+
+def _gain_ranges(sheet: Sheet, loop: LoopResult) -> None:
+    """Z over the factor on top of the loop's gain, the present one at 1."""
+    if loop.gain_ranges:
+        sheet.paragraph(f"Z over a factor on the gain: {'; '.join(map(_range, loop.gain_ranges))}", hanging=3)
+
+
+def _range(item: GainRange) -> str:
+    lower = "0" if item.lower == 0 else rounded_towards_one(item.lower)
+    span = f"above {lower}" if item.upper is None else f"{lower} to {rounded_towards_one(item.upper)}"
+    return f"{span}: {item.unstable_poles}"
