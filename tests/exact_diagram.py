@@ -153,6 +153,11 @@ class ExactDiagram:
         before, after = (count_roots(self.characteristic(k, copies)) for k in (index, index + 1))
         return LoopCounts(before, after, copies)
 
+    def has_feedback(self, index: int) -> bool:
+        """Whether closing loop ``index`` changes anything: L is not zero throughout."""
+        copies = self.part(index)
+        return bool(copies) and self.characteristic(index, copies) != self.characteristic(index + 1, copies)
+
     def whole(self, closed: int) -> RootCount:
         return count_roots(self.characteristic(closed))
 

@@ -29,13 +29,13 @@ DIAGRAMS = 200
 
 
 def usable_diagrams(seed: int, count: int) -> list[tuple[Declarations, ExactDiagram]]:
-    """Random diagrams whose stages are well posed and whose every cut lies on a closed path at its turn."""
+    """Random diagrams whose stages are well posed and in which every loop feeds back at its turn."""
     rng = np.random.default_rng(seed)
     found: list[tuple[Declarations, ExactDiagram]] = []
     while len(found) < count:
         declarations = random_diagram(rng)
         exact = ExactDiagram(declarations)
-        if all(exact.part(k) for k in range(len(declarations.loops))) and exact.well_posed():
+        if all(exact.has_feedback(k) for k in range(len(declarations.loops))) and exact.well_posed():
             found.append((declarations, exact))
     return found
 
