@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import lru_cache
 from math import lcm
 
 import numpy as np
@@ -210,21 +211,15 @@ class Polynomial:
         return right, on_axis
 
     def roots(self) -> NDArray[np.complex128]:
-        """The roots (degree,) with repeats, each accurate to double precision, ascending |s|; zero raises ValueError.
+        """The roots (degree,) with repeats, each accurate to double precision, ascending |s|; read-only.
 
         Real roots and roots on the imaginary axis come out exactly there, the others as exact conjugate pairs. Raises
-        OverflowError where a root lies beyond double precision.
+        ValueError for zero, OverflowError where a root lies beyond double precision, ArithmeticError where more roots
+        than five or so lie so close together (some 1e-16 of their size) that the iteration does not part them.
         """
         if not self:
             raise ValueError("every number is a root of the zero polynomial")
-        at_zero = self.order_at_zero()
-        found = [np.zeros(at_zero, complex)]
-        for factor, multiplicity in self.shifted_down(at_zero).square_free_factors():
-            symmetric = factor.symmetric_factor()
-            parts = [simple_roots(_quotient(factor, symmetric).integers()), _roots_of_even(symmetric)]
-            found.append(np.repeat(np.concatenate(parts), multiplicity))
-        roots = np.concatenate(found) + 0  # no negative zeros
-        return roots[np.lexsort((-roots.imag, roots.real, np.abs(roots)))]
+        return _roots(self)
 
     def integers(self) -> list[int]:
         """The primitive integer polynomial with the same roots, leading coefficient positive; not for zero."""
@@ -246,6 +241,20 @@ def _quotient(dividend: Polynomial, divisor: Polynomial) -> Polynomial:
     if quotient is None:
         raise ArithmeticError("inexact polynomial division")
     return quotient
+
+
+@lru_cache(maxsize=4096)
+def _roots(p: Polynomial) -> NDArray[np.complex128]:
+    at_zero = p.order_at_zero()
+    found = [np.zeros(at_zero, complex)]
+    for factor, multiplicity in p.shifted_down(at_zero).square_free_factors():
+        symmetric = factor.symmetric_factor()
+        parts = [simple_roots(_quotient(factor, symmetric).integers()), _roots_of_even(symmetric)]
+        found.append(np.repeat(np.concatenate(parts), multiplicity))
+    roots = np.concatenate(found) + 0  # no negative zeros
+    roots = roots[np.lexsort((-roots.imag, roots.real, np.abs(roots)))]
+    roots.setflags(write=False)
+    return roots
 
 
 def _in_square(p: Polynomial) -> Polynomial:

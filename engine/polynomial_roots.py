@@ -18,12 +18,12 @@ from numpy.typing import NDArray
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
-_SETTLED = 2.0**-88  # relative correction at which an iterate held as two doubles has converged
+_SETTLED = 2.0**-88  # |p/(z p')| at which an iterate z held as two doubles has converged
 _REAL = 2.0**-78  # |im| below this part of |root| is rounding
 _FIRST_BITS, _LAST_BITS = 160, 40_000
 _VALUE_BITS = 24  # fewer bits of p than these are rounding (its error is below 3 * degree units)
 _SLOPE_BITS = 104  # with fewer bits of z p' the rounding of p moves the root by more than _SETTLED
-_ITERATIONS = 200
+_ITERATIONS = 150
 
 
 def simple_roots(coefficients: Sequence[int]) -> ComplexArray:
@@ -55,22 +55,35 @@ def _quadratic_roots(c: int, b: int, a: int) -> tuple[complex, complex]:
 
 
 def _start(coefficients: Sequence[int]) -> ComplexArray:
-    """First approximations: eigenvalues of the companion matrix where its entries fit, else Newton's polygon.
+    """First approximations: eigenvalues of the companion matrix where they are credible, else Newton's polygon.
+
+    The k-th root by magnitude lies within a factor 2 * degree of the k-th radius of the polygon (A. Ostrowski, Acta
+    Math. 72 (1940), quoted from memory): eigenvalues elsewhere are rounding.
+    """
+    octaves = [_octave(c) for c in coefficients]
+    on_polygon = _polygon_start(octaves)
+    roots = _companion_eigenvalues(coefficients, octaves)
+    roots = roots[np.argsort(np.abs(roots))]
+    with np.errstate(divide="ignore"):
+        credible = np.abs(np.log2(np.abs(roots) / np.abs(on_polygon))) < 2 + math.log2(len(roots))
+    # Off the conjugate symmetry, which could hold two real roots together as a pair
+    return np.where(credible, roots * (1 + 2.0**-30 * np.exp(1j * np.arange(len(roots)))), on_polygon)
+
+
+def _companion_eigenvalues(coefficients: Sequence[int], octaves: Sequence[float]) -> ComplexArray:
+    """Approximate roots from doubles, zeros where the coefficients do not fit them.
 
     The variable is scaled by a power of two so that the roots lie about the unit circle.
     """
     degree = len(coefficients) - 1
-    octaves = [_octave(c) for c in coefficients]
     scale = round((octaves[0] - octaves[-1]) / degree)
     exponents = [octave - octaves[-1] + scale * (k - degree) for k, octave in enumerate(octaves)]
-    if max(abs(exponent) for exponent in exponents if exponent > -math.inf) > 900:
-        return _polygon_start(octaves)
+    if max(abs(exponent) for exponent in exponents if exponent > -math.inf) > 1000 or abs(scale) > 900:
+        return np.zeros(degree, complex)
     lead, octave = Fraction(coefficients[-1]), Fraction(2) ** scale
     companion = np.diag(np.ones(degree - 1), -1)
     companion[:, -1] = [-float(c / lead * octave ** (k - degree)) for k, c in enumerate(coefficients[:-1])]
-    roots = np.linalg.eigvals(companion) * 2.0**scale
-    # Off the conjugate symmetry, which could hold two real roots together as a pair
-    return np.asarray(roots * (1 + 2.0**-30 * np.exp(1j * np.arange(degree))), complex)
+    return np.asarray(np.linalg.eigvals(companion) * 2.0**scale, complex)
 
 
 def _octave(c: int) -> float:
@@ -105,29 +118,31 @@ def _below_chord(first: int, middle: int, last: int, octaves: Sequence[float]) -
 
 def _iterate(coefficients: Sequence[int], start: ComplexArray) -> ComplexArray:
     """All roots at once from first approximations, with as many bits as their conditioning asks for."""
-    high, low = start, np.zeros_like(start)
-    bits = _FIRST_BITS
+    high, low = start.copy(), np.zeros_like(start)
+    active, bits = np.arange(len(start)), _FIRST_BITS
     for _ in range(_ITERATIONS):
-        ratio, value_bits, slope_bits = _logarithmic_derivatives(coefficients, high, low, bits)
+        ratio, value_bits, slope_bits = _logarithmic_derivatives(coefficients, high[active], low[active], bits)
         with np.errstate(all="ignore"):
-            step = 1 / (ratio - _repulsion(high, low))
-        step[~np.isfinite(step)] = 0
-        size = np.abs(step) / np.abs(high)
-        open_ = size > _SETTLED
-        if not open_.any() and (slope_bits.min() > _SLOPE_BITS):
-            return high
-        if not open_.any() or (value_bits[open_] < _VALUE_BITS).any():
+            step = -1 / (ratio - _repulsion(high, low, active))
+            distance = 1 / np.abs(ratio) / np.abs(high[active])
+        near = distance < _SETTLED
+        if (slope_bits[near] < _SLOPE_BITS).any() or (value_bits[~near] < _VALUE_BITS).any():
             bits *= 2
             if bits > _LAST_BITS:
                 break
             continue
-        high, low = _moved(high, low, -step / np.maximum(size, 1))
+        step[~np.isfinite(step)] = 0
+        step /= np.maximum(np.abs(step) / np.abs(high[active]), 1)
+        high[active], low[active] = _moved(high[active], low[active], step)
+        active = active[~near]
+        if not len(active):
+            return high
     raise ArithmeticError(f"the roots of a polynomial of degree {len(start)} did not settle")
 
 
-def _repulsion(high: ComplexArray, low: ComplexArray) -> ComplexArray:
-    """sum over k of 1/(z_i - z_k); the differences keep the accuracy of the pairs of doubles."""
-    difference = (high[:, None] - high) + (low[:, None] - low)
+def _repulsion(high: ComplexArray, low: ComplexArray, active: NDArray[np.int64]) -> ComplexArray:
+    """sum over k of 1/(z_i - z_k) for the active i; the differences keep the accuracy of the pairs of doubles."""
+    difference = (high[active, None] - high) + (low[active, None] - low)
     difference[difference == 0] = np.inf
     return np.asarray((1 / difference).sum(axis=1))
 

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from fractions import Fraction
-from functools import lru_cache
 from math import isfinite
 from sys import float_info
 
@@ -164,15 +163,24 @@ def _without_s(factors: Factors) -> FactorList:
     return tuple(sorted(kept, key=lambda item: (item[0].degree, item[0].coefficients)))
 
 
-def _check_range(x: DelayedQuotient, factors: Sequence[Polynomial]) -> None:
-    inside = [(time, *polynomial.coefficients) for time, polynomial in x.delayed_sum]
-    numbers = [x.gain, x.delay, *(c for p in factors for c in p.coefficients), *(c for row in inside for c in row)]
-    if not all(_fits_double(number) for number in numbers):
+def _check_range(x: DelayedQuotient, factors: Iterable[Polynomial]) -> None:
+    """Raises UnusableBlockError where a constant or root is beyond double precision, or roots cannot be told apart."""
+    polynomials = [*factors, *(n for _, n in x.delayed_sum)]
+    numbers = [x.gain, x.delay, *(time for time, _ in x.delayed_sum), *(c for p in polynomials for c in p.coefficients)]
+    if not all(map(_fits_double, numbers)):
         raise UnusableBlockError(
             "out-of-range",
             "leads to constants beyond double precision (about 1e-308 to 1e308): "
             "change its constants, or split it into several blocks of lower order",
         )
+    try:
+        for polynomial in polynomials:
+            polynomial.roots()
+    except ArithmeticError:  # OverflowError is one
+        raise UnusableBlockError(
+            "roots-too-close",
+            "has a group of poles or zeros too close together to be told apart: write it as a product of lower order",
+        ) from None
 
 
 def _fits_double(number: Fraction) -> bool:
@@ -203,13 +211,8 @@ def _doubles(numbers: Iterable[Fraction]) -> list[Fraction]:
     return [Fraction(float(number)) for number in numbers]
 
 
-@lru_cache(maxsize=1024)
-def _roots(p: Polynomial) -> ComplexArray:
-    return p.roots()
-
-
 def _all_roots(factors: FactorList, at_zero: int) -> ComplexArray:
-    found = [np.repeat(_roots(factor), multiplicity) for factor, multiplicity in factors]
+    found = [np.repeat(factor.roots(), multiplicity) for factor, multiplicity in factors]
     return np.concatenate([np.zeros(max(at_zero, 0), complex), *found])
 
 
