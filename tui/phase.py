@@ -12,16 +12,19 @@ def phase_degrees(curve: LoopCurve) -> FloatArray:
     """The phase (n,) of L in degrees, continuous within each piece.
 
     Between pieces it goes on by the turn of the arc that joins them; the first piece starts where the arc at
-    standstill ends, or between -270 and 90 degrees where there is none.
+    standstill ends, or between -270 and 90 degrees where there is none. NaN where L is no finite number.
     """
     phase = np.full(curve.frequency.size, np.nan)
     reached: float | None = None
     for start, stop in curve.pieces:
-        piece = np.unwrap(np.angle(curve.L[start:stop]))
+        known = start + np.flatnonzero(np.isfinite(curve.L[start:stop]))
+        if known.size == 0:
+            continue
+        piece = np.unwrap(np.angle(curve.L[known]))
         before = curve.frequency[start - 1] if start > 0 else 0.0
         begin = _begin(curve.arcs, before, curve.frequency[start], reached)
-        phase[start:stop] = piece + _whole_turns(begin - piece[0])
-        reached = float(phase[stop - 1])
+        phase[known] = piece + _whole_turns(begin - piece[0])
+        reached = float(phase[known[-1]])
     return np.asarray(np.degrees(phase))
 
 

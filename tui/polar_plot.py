@@ -137,7 +137,8 @@ def _band(curve: LoopCurve, window: Window, canvas: Canvas, view: PolarView) -> 
     """Circles of the band that measured blocks leave round L, at places spread evenly over the visible curve."""
     centre = _seen(curve.L, view)
     dot = (window.top - window.bottom) / canvas.dots_upward
-    wide = np.abs(_seen(curve.L + curve.radius, view) - centre) > dot
+    with np.errstate(invalid="ignore"):
+        wide = np.abs(_seen(curve.L + curve.radius, view) - centre) > dot
     places = np.flatnonzero(wide & window.contains(centre.real, centre.imag))
     if places.size == 0:
         return []

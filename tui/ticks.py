@@ -22,7 +22,7 @@ class Tick:
 
 def linear_ticks(lower: float, upper: float, most: int) -> tuple[Tick, ...]:
     """At most ``most`` ticks at multiples of 1, 2 or 5 times a power of ten in [lower, upper]."""
-    coarsest = 10.0 ** np.ceil(np.log10(upper - lower))
+    coarsest = float(10.0 ** np.ceil(np.log10(upper - lower)))
     steps = sorted(coarsest * factor for factor in _one_two_five(-4, 1))
     return _multiples(lower, upper, most, steps)
 
