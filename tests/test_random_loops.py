@@ -20,10 +20,15 @@ def batches(count: int, heavy_count: int) -> list[object]:
     return light + [pytest.param(seed, id=f"batch{seed}", marks=heavy) for seed in range(count, heavy_count)]
 
 
-def run(declarations: list[Declarations]) -> Tally:
+def run(declarations: list[Declarations], in_full: int) -> Tally:
+    """Count every diagram all open and all closed; look at each loop of every ``in_full``-th in full."""
     tally = Tally()
     for number, each in enumerate(declarations):
-        compare_with_exact_counts(each, ExactDiagram(each), number, tally)
+        compare_with_exact_counts(each, ExactDiagram(each), number, tally, every_loop=number % in_full == 0)
+    assert tally.wrong == []
+    assert tally.needlessly_undecided == []
+    assert tally.stable > BATCH / 10
+    assert tally.unstable > BATCH / 10
     return tally
 
 
@@ -31,20 +36,21 @@ def run(declarations: list[Declarations]) -> Tally:
 def test_single_loops(seed: int) -> None:
     """Orders 2 to 14, unstable and integrating open loops, damping down to 1e-4 (2,000 loops; 20,000 heavy)."""
     rng = np.random.default_rng([1877, seed])
-    tally = run([random_single_loop(rng) for _ in range(BATCH)])
-    assert tally.wrong == []
-    assert tally.needlessly_undecided == []
-    assert tally.stable > BATCH / 10
-    assert tally.unstable > BATCH / 10
+    run([random_single_loop(rng) for _ in range(BATCH)], in_full=10)
 
 
 @pytest.mark.parametrize("seed", batches(2, 20))
 def test_cascades(seed: int) -> None:
     """Three loops with feedback across that no cut opens (500 cascades; 5,000 heavy)."""
     rng = np.random.default_rng([1932, seed])
-    tally = run([random_cascade(rng) for _ in range(BATCH)])
-    assert tally.wrong == []
-    assert tally.needlessly_undecided == []
-    assert tally.stable > BATCH / 10
-    assert tally.unstable > BATCH / 10
+    tally = run([random_cascade(rng) for _ in range(BATCH)], in_full=4)
     assert tally.left_on_axis > 0
+
+
+@heavy
+@pytest.mark.parametrize("seed", range(100, 110))
+def test_every_loop_in_full(seed: int) -> None:
+    """1,250 single loops and 1,250 cascades, every stage of each."""
+    rng = np.random.default_rng([1945, seed])
+    make = random_single_loop if seed % 2 else random_cascade
+    run([make(rng) for _ in range(BATCH)], in_full=1)
