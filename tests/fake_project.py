@@ -98,12 +98,9 @@ class FakeProject:
     def with_gain(self, name: str, gain: float) -> FakeProject:
         return replace(self, gains=MappingProxyType({**self.gains, name: gain}))
 
-    def loop(self, name: str) -> LoopResult:
+    def check(self, names: Sequence[str] | None = None) -> Result:
         if self.failing and any(gain != 1 for gain in self.gains.values()):
             raise ArithmeticError("the budget of cells is \x1b[31mspent[/bold]")
-        return self._results[self.names.index(name)]
-
-    def check(self, names: Sequence[str] | None = None) -> Result:
         loops = self._results
         failed = any(loop.verdict == "unstable" or any(f.met is False for f in loop.limits) for loop in loops)
         return Result(
@@ -112,11 +109,11 @@ class FakeProject:
         )  # fmt: skip
 
     def curve(self, name: str) -> LoopCurve:
-        L = self._response(name, FREQUENCY)
+        L = self.response(name, FREQUENCY)
         empty = np.zeros(len(L))
         return LoopCurve(FREQUENCY, L, 1 / (1 + L), L / (1 + L), empty, ((0, len(L)),), (), empty[:0], None, 0j)
 
-    def _response(self, name: str, frequency: FloatArray) -> ComplexArray:
+    def response(self, name: str, frequency: FloatArray) -> ComplexArray:
         kind = list(LOOPS)[self.names.index(name)]
         gains = {key: self.gains[given] for key, given in zip(LOOPS, self.names, strict=True)}
         return np.asarray(LOOPS[kind](2j * np.pi * frequency, gains), dtype=np.complex128)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import threading
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -11,7 +12,7 @@ from fake_project import LOOPS, FakeProject
 from screen_text import press, settled, shown_rows, shown_text
 from textual.pilot import Pilot
 
-from encircle.engine.result import LoopResult
+from encircle.engine.result import Result
 from encircle.tui.actions import ACTIONS
 from encircle.tui.app import EncircleApp
 from encircle.tui.trial import Trial
@@ -275,11 +276,11 @@ class SlowProject(FakeProject):
     gate = threading.Event()
     counted: list[float] = []  # noqa: RUF012  (shared on purpose: copies made by with_gain report here)
 
-    def loop(self, name: str) -> LoopResult:
-        if self.gains["current"] != 1 and name == "current":
+    def check(self, names: Sequence[str] | None = None) -> Result:
+        if self.gains["current"] != 1:
             assert self.gate.wait(10)
             self.counted.append(self.gains["current"])
-        return super().loop(name)
+        return super().check(names)
 
 
 async def test_while_a_long_count_runs_keys_are_answered_and_only_the_newest_is_shown() -> None:

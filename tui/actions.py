@@ -70,7 +70,7 @@ ACTIONS: tuple[Action, ...] = (
     Action("full_size", ("enter", "z"), "panel at full size, and back", Group.PANELS, "full size", 1),
     Action("scroll_down", ("space", "pagedown"), "scroll down", Group.PANELS),
     Action("scroll_up", ("backspace", "pageup"), "up", Group.PANELS, paired=True),
-    Action("back", ("escape",), "leave help, full size, typing", Group.PANELS),
+    Action("back", ("escape",), "leave help, full size, typing", Group.PANELS, urgent=True),
     Action("help", ("question_mark", "f1"), "this page", Group.PROGRAM, "help", 0),
     Action("quit", ("q", "ctrl+c", "ctrl+q"), "quit; the trial is kept", Group.PROGRAM, "quit", 0, urgent=True),
     Action("suspend", ("ctrl+z",), "pause; fg comes back", Group.PROGRAM, urgent=True),

@@ -20,7 +20,7 @@ from textual.message import Message
 from textual.widgets import Input
 
 from encircle.tui.actions import ACTIONS
-from encircle.tui.cursor import FAR_STEPS, cursor_index, next_mark, readout_row, stepped
+from encircle.tui.cursor import FAR_STEPS, cursor_index, leaves_band, next_mark, readout_row, stepped
 from encircle.tui.footer import footer_row
 from encircle.tui.gain_entry import WANTED, typed_gain
 from encircle.tui.line_panel import LinePanel
@@ -39,6 +39,7 @@ from encircle.tui.wording import as_declared, rounded
 
 PATIENCE = 0.08  # s: a count that takes longer is finished beside the screen
 COARSE, FINE = 10, 1  # tenths of a decibel
+WHILE_TYPING = {action.id for action in ACTIONS if action.urgent}
 WHILE_HELPING = {"help", "back", "full_size", "scroll_down", "scroll_up", "outer_loop", "inner_loop", "quit", "suspend"}
 
 
@@ -60,9 +61,9 @@ class EncircleApp(App[int]):
     AUTO_FOCUS = None
     ENABLE_COMMAND_PALETTE = False
     ALLOW_SELECT = False
+    # All bindings have priority: keys that arrive in one burst are then taken in their order, typed values included.
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding(",".join(a.keys), f"act('{a.id}')", a.description, show=False, id=a.id, priority=a.urgent)
-        for a in ACTIONS
+        Binding(",".join(a.keys), f"act('{a.id}')", a.description, show=False, id=a.id, priority=True) for a in ACTIONS
     ]
 
     def __init__(self, project: LoopProject, *, store: TrialStore | None = None, ascii_only: bool = False) -> None:
@@ -148,7 +149,7 @@ class EncircleApp(App[int]):
             return True
         name = str(parameters[0])
         if self.query_one("#entry", Input).display:
-            return name in ("back", "quit", "suspend")
+            return name in WHILE_TYPING
         return self._view.panel is not Panel.HELP or name in WHILE_HELPING or name.startswith("panel_")
 
     def action_act(self, name: str) -> None:
@@ -177,9 +178,14 @@ class EncircleApp(App[int]):
             self._count()
 
     def _move_cursor(self, steps: int) -> None:
-        if self._picture is not None:
-            place = stepped(self._picture.curve, cursor_index(self._picture, self._view), steps)
-            self._view = replace(self._view, cursor=place)
+        if self._picture is None:
+            return
+        curve, index = self._picture.curve, cursor_index(self._picture, self._view)
+        start, end = float(curve.frequency[index]), stepped(curve, index, steps)
+        if leaves_band(self._project.band, start, end) and not self._view.whole_band:
+            self._notice = "end of the band that is shown; a shows all frequencies"
+        else:
+            self._view = replace(self._view, cursor=end)
 
     def _to_mark(self, direction: int) -> None:
         if self._picture is None:

@@ -7,7 +7,8 @@ from collections.abc import Iterable
 
 import numpy as np
 
-from encircle.engine.result import LoopCurve, LoopResult, Margins
+from encircle.engine.result import LoopCurve
+from encircle.tui.marks import marked_frequencies
 from encircle.tui.picture import Picture
 from encircle.tui.readout import nearest_index, readout
 from encircle.tui.sheet import Ink, Piece, Row, Sheet
@@ -40,24 +41,9 @@ def stepped(curve: LoopCurve, index: int, steps: int) -> float:
     return float(curve.frequency[min(max(target, 0), len(curve.frequency) - 1)])
 
 
-def marked_frequencies(loop: LoopResult) -> tuple[float, ...]:
-    """Frequencies worth a look, ascending: crossings of the real axis, crossovers, margins and peaks."""
-    crossings = [crossing.frequency for crossing in loop.real_axis_crossings]
-    found = [*crossings, *(_of_margins(loop.margins) if loop.margins else ())]
-    return tuple(sorted({value for value in found if value}))
-
-
-def _of_margins(margins: Margins) -> list[float | None]:
-    places = (
-        margins.gain_increase,
-        margins.gain_decrease,
-        margins.phase,
-        margins.delay,
-        margins.modulus,
-        margins.sensitivity_peak,
-        margins.complementary_peak,
-    )
-    return [*margins.gain_crossovers, *(place.frequency for place in places if place is not None)]
+def leaves_band(band: tuple[float, float], start: float, end: float) -> bool:
+    """Whether a step from ``start`` to ``end`` goes further out of the band that is shown."""
+    return (end > band[1] and end > start) or (end < band[0] and end < start)
 
 
 def next_mark(picture: Picture, index: int, direction: int) -> float | None:

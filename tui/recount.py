@@ -7,6 +7,11 @@ from collections.abc import Callable
 from concurrent.futures import Future
 from dataclasses import dataclass
 
+import numpy as np
+
+from encircle.engine.result import LoopCurve, LoopResult
+from encircle.tui.marked_curve import with_points
+from encircle.tui.marks import marked_frequencies
 from encircle.tui.picture import LoopProject, Picture
 
 Superseded = Callable[[], bool]
@@ -17,22 +22,29 @@ class SupersededError(Exception):
 
 
 def picture_of(filed: LoopProject, now: LoopProject, chosen: int, superseded: Superseded) -> Picture:
-    """Count every loop of the file and of the trial, from the inside to the outside, and take the chosen curve."""
+    """Count the file and the trial, and take the curve of the chosen loop."""
+    results = []
     for project in (filed, now):
-        for name in project.loop_names:
-            if superseded():
-                raise SupersededError
-            project.loop(name)
+        if superseded():
+            raise SupersededError
+        results.append(project.check())
     name = now.loop_names[chosen]
     inside = now.loop_names[: chosen + 1]
     differs = any(now.gains[inner] != filed.gains[inner] for inner in inside)
     return Picture(
-        filed=filed.check(),
-        now=now.check(),
+        filed=results[0],
+        now=results[1],
         chosen=chosen,
-        curve=now.curve(name),
+        curve=_marked_curve(now, results[1].loops[chosen]),
         curve_before=filed.curve(name) if differs else None,
     )
+
+
+def _marked_curve(project: LoopProject, loop: LoopResult) -> LoopCurve:
+    """The curve with all frequencies worth a look among its points."""
+    curve = project.curve(loop.name)
+    marks = np.array(marked_frequencies(loop))
+    return with_points(curve, marks, project.response(loop.name, marks)) if len(marks) else curve
 
 
 @dataclass(frozen=True, slots=True)
