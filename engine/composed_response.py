@@ -163,9 +163,9 @@ def _inside(factor: PrincipalPower | Function) -> Product:
 
 
 def _logarithm(model: TaylorModel) -> FloatArray:
-    """log2 of the size at the middle of each cell."""
-    size = np.log2(np.abs(model.v)) + exponents(model)
-    return np.where(np.isnan(size), -np.inf, size)
+    """log2 of the size of each cell, -inf where nothing is proved."""
+    size = np.log2(np.abs(model.v) + model.r) + exponents(model)
+    return np.where(np.isfinite(size), size, -np.inf)
 
 
 def _takeovers(sizes: FloatArray) -> list[float]:

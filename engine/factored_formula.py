@@ -3,7 +3,7 @@
 Every formula becomes a product  c s^p prod factor^n  with factors that are sums, principal powers of products, or functions
 that are analytic where their argument is: exp x, (exp x - 1)/x, and with z = x^2 also cosh sqrt z, sinh(sqrt z)/sqrt z and
 tanh(sqrt z)/sqrt z. sinh x is written x (sinh x/x), tanh x as x (tanh x/x): so the zero at x = 0 is a factor, quotients
-such as tanh(x)/x lose it by cancellation of equal factors, and no cut of a root inside cosh remains. All identities used hold
+such as tanh(x)/x lose it by cancellation of equal factors, and no cut of a root inside cosh remains; sinh/cosh becomes tanh. All identities used hold
 for the principal branch at every s with Re s >= 0 where both sides are defined:
 c^a u^a = (c u)^a for c > 0, (u^a)^n = u^(a n) for integer n, u^a u^b = u^(a+b), (u^a)^b = u^(a b) for |a| < 1.
 """
@@ -11,7 +11,7 @@ c^a u^a = (c u)^a for c > 0, (u^a)^n = u^(a n) for integer n, u^a u^b = u^(a+b),
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import Literal
 
@@ -23,16 +23,19 @@ Analytic = Literal["exp", "exponential_quotient", "cosh_of_root", "sinhc_of_root
 
 @dataclass(frozen=True, slots=True)
 class Product:
-    """coefficient * s^power * prod factor^n; two products with the same parts are equal."""
+    """coefficient * s^power * prod factor^n; two products with the same parts are equal.
+
+    The product is s^order times a part that is regular at s = 0.
+    """
 
     coefficient: RealInterval
     power: Fraction
     factors: tuple[tuple[Factor, Fraction], ...]
+    order: Fraction = field(init=False, compare=False, repr=False)
 
-    @property
-    def order(self) -> Fraction:
-        """The product is s^order times a part that is regular at s = 0."""
-        return self.power + sum((n * factor.order for factor, n in self.factors), Fraction(0))
+    def __post_init__(self) -> None:
+        order = self.power + sum((n * factor.order for factor, n in self.factors), Fraction(0))
+        object.__setattr__(self, "order", order)  # the one write to a frozen value, while it is made
 
     @property
     def is_constant(self) -> bool:
@@ -179,6 +182,7 @@ class _Builder:
                     plain[factor] = plain.get(factor, Fraction(0)) + n
         if coefficient.is_zero:
             return ZERO
+        self._join_hyperbolic(plain)
         whole = [Product(coefficient, power, self._sorted(plain))]
         whole += [self.power(base, exponent) for base, exponent in roots.items() if exponent.denominator == 1]
         if len(whole) > 1:  # integer powers of a base bring in its factors: join them with the others
@@ -190,6 +194,20 @@ class _Builder:
         if not total.is_zero:
             coefficient, factors = self._with_exponential(coefficient, total, factors)
         return Product(coefficient, power, self._sorted(dict([*whole[0].factors, *factors])))
+
+    def _join_hyperbolic(self, powers: dict[Factor, Fraction]) -> None:
+        """sinh/cosh of the same argument become tanh, in either position."""
+        for factor in list(powers):
+            if not isinstance(factor, Function) or factor.name != "sinhc_of_root":
+                continue
+            cosh = self._kept.get(("cosh_of_root", factor.argument))
+            if cosh is None or powers.get(cosh, Fraction(0)) * powers[factor] >= 0:
+                continue
+            shared = min(abs(powers[factor]), abs(powers[cosh])) * (1 if powers[factor] > 0 else -1)
+            tanh = self._keep(("tanhc_of_root", factor.argument), Function("tanhc_of_root", factor.argument))
+            powers[factor] -= shared
+            powers[cosh] += shared
+            powers[tanh] = powers.get(tanh, Fraction(0)) + shared
 
     def _with_exponential(
         self, coefficient: RealInterval, x: Product, factors: list[tuple[Factor, Fraction]]

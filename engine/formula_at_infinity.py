@@ -6,7 +6,7 @@ from fractions import Fraction
 
 import numpy as np
 
-from encircle.engine.factored_formula import Factor, Function, PrincipalPower, Product, Sum
+from encircle.engine.factored_formula import Analytic, Factor, Function, PrincipalPower, Product, Sum
 from encircle.engine.growth import Exponential, Growth, exponential, off_negative_axis, plain, single_term, unknown
 from encircle.engine.real_interval import RealInterval
 from encircle.engine.result import FloatArray
@@ -67,15 +67,20 @@ class FarField:
         one = plain(single_term(self._radius, RealInterval.exact(1), Fraction(0)))
         if factor.name == "exponential_quotient":
             return (exponential(argument) + _negative(one)) * plain(argument).power(Fraction(-1))
-        x = argument.power(HALF)  # any branch: the functions are even in x
-        rising, falling = exponential(x), exponential(x.scaled(RealInterval.exact(-1)))
-        half = RealInterval.exact(HALF)
-        cosh = (rising + falling) * plain(single_term(self._radius, half, Fraction(0)))
-        if factor.name == "cosh_of_root":
-            return cosh
-        sinh = (rising + _negative(falling)) * plain(single_term(self._radius, half, Fraction(0)))
-        sinhc = sinh * plain(x).power(Fraction(-1))
-        return sinhc if factor.name == "sinhc_of_root" else sinhc * cosh.power(Fraction(-1))
+        return _even_function(factor.name, argument.power(HALF), one)
+
+
+def _even_function(name: Analytic, x: Growth, one: Exponential) -> Exponential:
+    """cosh x, sinh(x)/x or tanh(x)/x; the branch of the root x is free, they are even. tanh x = (1 - q)/(1 + q), q = exp(-2x)."""
+    inverse = plain(x).power(Fraction(-1))
+    if name == "tanhc_of_root":
+        q = exponential(x.scaled(RealInterval.exact(-2)))
+        return (one + _negative(q)) * (one + q).power(Fraction(-1)) * inverse
+    half = plain(one.factor.scaled(RealInterval.exact(HALF)))
+    rising, falling = exponential(x), exponential(x.scaled(RealInterval.exact(-1)))
+    if name == "cosh_of_root":
+        return (rising + falling) * half
+    return (rising + _negative(falling)) * half * inverse
 
 
 def _negative(x: Exponential) -> Exponential:

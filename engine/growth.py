@@ -30,7 +30,7 @@ Term = tuple[Fraction, RealInterval]
 Terms = tuple[Term, ...]
 
 MOST_TERMS = 5
-DECAY = Fraction(16)  # power of 1/|s| by which an exponential decay is represented
+DECAY = Fraction(8)  # power of 1/|s| by which an exponential decay is represented
 UP = 1.0 + 1e-10  # charged on every bound: covers hundreds of roundings and |s|^p with p rounded to a double
 UNKNOWN_ORDER = Fraction(10**6)
 

@@ -137,7 +137,7 @@ def _series(z: TaylorModel, series: _Series) -> TaylorModel:
         z = TaylorModel(z.v * factor, z.d * factor, z.e * factor, outward(z.r * factor), None)
     powers: ComplexArray = np.ones((TERMS, len(z.v)), complex)
     np.multiply.accumulate(np.broadcast_to(z.v, (TERMS - 1, len(z.v))), axis=0, out=powers[1:])
-    value, first, second = series.rows @ powers
+    value, first, second = (series.rows[:, :, None] * powers).sum(axis=1)  # not @: its rounding depends on the batch
     size_d, size_e = np.abs(z.d), np.abs(z.e)
     sigma = size_d + size_e
     tail = np.abs(first) * z.r + np.abs(second) * (2.0 * size_d * size_e + size_e * size_e + z.r * (2.0 * sigma + z.r))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import lru_cache
 from typing import NamedTuple
 
 from encircle.engine.expression import FunctionName
@@ -120,16 +121,22 @@ class RealInterval:
 
     def scaled(self) -> ScaledConstant:
         """The interval as a double with a radius, scaled by a power of two."""
-        exponent = self.magnitude.numerator.bit_length() - self.magnitude.denominator.bit_length()
-        scale = Fraction(2) ** -exponent
-        centre = (self.lower + self.upper) / 2 * scale
-        value = float(centre)
-        radius = float(abs(centre - Fraction(value)) + (self.upper - self.lower) / 2 * scale)
-        return ScaledConstant(value, radius * (1.0 + 1e-12), exponent)
+        return _scaled(self)
 
     def __float__(self) -> float:
         """The double nearest to the middle. Raises OverflowError outside double precision."""
         return float((self.lower + self.upper) / 2)
+
+
+@lru_cache(maxsize=4096)
+def _scaled(interval: RealInterval) -> ScaledConstant:
+    largest = interval.magnitude
+    exponent = largest.numerator.bit_length() - largest.denominator.bit_length()
+    scale = Fraction(2) ** -exponent
+    centre = (interval.lower + interval.upper) / 2 * scale
+    value = float(centre)
+    radius = float(abs(centre - Fraction(value)) + (interval.upper - interval.lower) / 2 * scale)
+    return ScaledConstant(value, radius * (1.0 + 1e-12), exponent)
 
 
 def _enclosed(lower: Fraction, upper: Fraction) -> RealInterval:

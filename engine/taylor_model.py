@@ -110,7 +110,8 @@ def reciprocal(q: TaylorModel) -> TaylorModel:
     third = size_a * np.abs(a * a - 2.0 * b) + size_b * np.abs(second)
     whole = 1.0 + size_a + np.abs(second)
     tail = third + (size_w * q.r + SLACK) * whole + 16.0 * SLACK * reach * reach * reach
-    r = outward(size_w * np.where(least > 0.0, tail / least, np.inf))
+    proved = (least > 0.0) & (size_w > 0.0)  # the reciprocal of an overflow proves nothing
+    r = outward(size_w * np.where(proved, tail / least, np.inf))
     model = TaylorModel(w, -w * a, w * second, r, None if q.exponent is None else -q.exponent)
     return _normalised(model, size_w * whole)
 
@@ -155,6 +156,7 @@ def real_power(q: TaylorModel, alpha: float) -> TaylorModel:
     root, exponent, slack = _power_of_centre(q.v, q.exponent, alpha)
     half_second = 0.5 * alpha * (alpha - 1.0)
     tail, whole = _power_tail(alpha, a, size_a, size_b, rho)
+    tail = np.where(np.abs(w) > 0.0, tail, np.inf)  # the power of an overflow proves nothing
     r = outward(np.abs(root) * (tail * (1.0 + 2.0 * (8.0 + abs(alpha)) * SLACK) + slack * (whole + tail)) * (1.0 + SLACK))
     model = TaylorModel(root, root * (alpha * a), root * (alpha * b + half_second * (a * a)), r, exponent)
     return _normalised(model, np.abs(root) * whole)
