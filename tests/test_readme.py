@@ -119,7 +119,19 @@ def test_files_and_links_that_are_named_exist(text: str) -> None:
     assert all((REPOSITORY / path).exists() for path in links + paths)
 
 
-def test_the_map_of_modules_is_complete() -> None:
-    stems = {file.stem for folder in ("engine", "tui") for file in (REPOSITORY / folder).glob("*.py")} - {"__init__"}
-    missing = sorted(stem for stem in stems if f"`{stem}`" not in DEVELOPERS)
-    assert not missing
+def groups(title: str) -> dict[str, int]:
+    """The modules of one table of the map, each with the number of its row."""
+    table = DEVELOPERS[DEVELOPERS.index(f"| {title} | modules |") :].split("\n\n")[0]
+    return {name: row for row, line in enumerate(table.splitlines()) for name in re.findall(r"`([a-z_]+)`", line)}
+
+
+@pytest.mark.parametrize(("title", "folder"), [("engine", "engine"), ("terminal", "tui")])
+def test_the_map_of_modules_is_complete_and_true(title: str, folder: str) -> None:
+    rows = groups(title)
+    files = {file.stem: file for file in (REPOSITORY / folder).glob("*.py") if file.stem != "__init__"}
+    assert sorted(rows) == sorted(files)
+    for name, file in files.items():
+        used = re.findall(
+            rf"^\s*from encircle\.{folder}\.([a-z_]+) import", file.read_text(encoding="utf-8"), re.MULTILINE
+        )
+        assert all(rows[other] <= rows[name] for other in used), f"{name} imports from a group below its own"
