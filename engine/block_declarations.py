@@ -48,7 +48,8 @@ def read_block(name: str, table: CheckedTable, around: Surroundings) -> Block | 
     if len(kinds) == 1:
         return _READERS[kinds[0]](name, table, around)
     if kinds:
-        table.table_error("block-kind", f"the block is given as {listed(kinds)}; exactly one of them is needed")
+        given = listed(next(key for key in _MARKS[kind] if table.has(key)) for kind in kinds)
+        table.table_error("block-kind", f"the block is given by {given} at once; exactly one of them is needed")
     else:
         near = "".join(nearest_known(key, _MARKS) for key in list(table.content)[:20])
         table.table_error("block-kind", f"the block needs one of {listed(_MARKS, 'or')}{near}")
@@ -68,7 +69,7 @@ def _formula(name: str, table: CheckedTable, around: Surroundings) -> Block | No
     constants = {key: own.get(key, around.parameters.get(key, _ZERO)) for key in used if key not in ("s", "pi")}
     if not known or not _within_bounds(table, expression, constants):
         return None
-    return FormulaBlock(name, expression, text, constants, unstable_poles, note)
+    return FormulaBlock(name, expression, one_line(text), constants, unstable_poles, note)
 
 
 def _own_parameters(table: CheckedTable, around: Surroundings) -> dict[str, Fraction]:

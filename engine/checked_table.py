@@ -110,7 +110,8 @@ class CheckedTable:
         """A whole number within limits."""
         value = self.content.get(key)
         if isinstance(value, bool) or not isinstance(value, int):
-            self.error("not-a-whole-number", key, f"must be a whole number, not {described(value)}")
+            instead = "without point or exponent" if isinstance(value, Fraction) else f"not {described(value)}"
+            self.error("not-a-whole-number", key, f"must be a whole number, {instead}")
             return None
         if not least <= value <= most:
             self.error("out-of-range", key, f"is {described(value)} and must lie from {least} to {most}")

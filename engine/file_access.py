@@ -53,7 +53,7 @@ def decode(content: bytes) -> str:
         byte = content[error.start]
         sentence = f"is not UTF-8: line {line} holds the byte 0x{byte:02x}; save it as UTF-8 text"
         raise UnreadableFile("not-utf-8", sentence) from None
-    return text.replace("\r\n", "\n").replace("\r", "\n")
+    return text.replace("\r\n", "\n")
 
 
 def _unreadable(path: Path, error: OSError) -> UnreadableFile:

@@ -42,6 +42,9 @@ def read_loops(
     ``others`` says of each name that is no signal what it is; ``shared`` holds the limits of every loop, which a
     loop's own replace key by key.
     """
+    if isinstance(root.content.get("loops"), dict):
+        root.error("not-an-array", "loops", "is an array of tables; write each loop as `[[loops]]` in double brackets")
+        return ()
     values = root.array("loops") if root.has("loops") else []
     if values == []:
         root.error("no-loops", "loops", "is missing: write one `[[loops]]` with `name` and `cut` for each loop")
@@ -98,7 +101,8 @@ def _cut(table: CheckedTable, signals: Collection[str], others: Mapping[str, str
     if cut in others:
         table.error("cut-no-signal", "cut", f"is {quoted(cut)}, which is {others[cut]}; a loop is cut at a signal")
     else:
-        table.error("unknown-name", "cut", f"is {quoted(cut)}, and no signal has that name{nearest_known(cut, signals)}")
+        near = nearest_known(cut, signals)
+        table.error("unknown-name", "cut", f"is {quoted(cut)}, and no signal has that name{near}")
     return None
 
 

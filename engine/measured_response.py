@@ -30,7 +30,7 @@ from encircle.engine.text import listed, nearest_known, quoted
 
 __all__ = ["KNOWN_COLUMNS", "MOST_BYTES", "ResponseFileError", "read_response"]
 
-MOST_BYTES: Final = 64 * 2**20
+MOST_BYTES: Final = 32 * 2**20
 _FREQUENCIES: Final = ("frequency_hz", "frequency_rad_s")
 _PAIRS: Final = (
     ("real", "imag"),
@@ -40,6 +40,7 @@ _PAIRS: Final = (
     ("magnitude_db", "phase_rad"),
 )
 KNOWN_COLUMNS: Final = (*_FREQUENCIES, *dict.fromkeys(key for pair in _PAIRS for key in pair), "coherence")
+_MOST_FIELDS = 10_000  # no line holds more
 _SHOWN_FIELDS = 12
 _LARGEST_COHERENCE = 1.0001  # single-precision files round 1 upward
 
@@ -91,15 +92,19 @@ def _frozen(
 
 
 def _header(lines: Lines, columns: Mapping[str, str]) -> tuple[str | None, int, _Choice]:
-    """Separator, number of fields and chosen columns: the first separator whose fields name all columns needed."""
-    complaints: list[tuple[int, ResponseFileError]] = []
+    """Separator, number of fields and chosen columns: the first separator whose fields name all columns needed.
+
+    Where none does, the complaint is that of the separator with which most columns are known, then most fields found.
+    """
+    complaints: list[tuple[float, ResponseFileError]] = []
     for separator in SEPARATORS:
-        fields = split_row(lines, 0, separator)
+        fields = lines.texts[0].split(separator)
         try:
+            fields = split_row(lines, 0, separator)
             return separator, len(fields), _choose(lines, fields, columns)
         except ResponseFileError as error:
             known = sum(columns.get(key, key) in fields for key in KNOWN_COLUMNS)
-            complaints.append((known, error))
+            complaints.append((known + len(fields) / (1 + _MOST_FIELDS), error))
     raise max(complaints, key=lambda complaint: complaint[0])[1]
 
 
@@ -125,6 +130,8 @@ def _require_header(lines: Lines, fields: Sequence[str]) -> None:
 
 def _positions(lines: Lines, fields: Sequence[str], columns: Mapping[str, str]) -> dict[str, int]:
     """Where the known columns stand in the header."""
+    if len(set(columns.values())) < len(columns):
+        raise lines.error("column-twice", 0, "`columns` names one column for two purposes")
     positions: dict[str, int] = {}
     for key in KNOWN_COLUMNS:
         header = columns.get(key, key)

@@ -10,7 +10,9 @@ from typing import Final
 
 from encircle.engine.text import one_line, quoted
 
-MOST_LINES: Final = 1_000_000
+MOST_LINES: Final = 500_000
+_MOST_FIELDS = 4_000_000
+_LONGEST_LINE = 10_000
 _MOST_NOTES = 100
 _NOTE_LENGTH = 200
 
@@ -47,13 +49,18 @@ class Lines:
 
 
 def split_lines(text: str, file: str) -> Lines:
-    """The lines of a file; those that start with ``#`` are kept as notes.
+    """The lines of a file; those that start with ``#`` are kept as notes, the first hundred of them.
 
-    Raises ResponseFileError for a file without a header or with more than a million lines.
+    Raises ResponseFileError for a file that holds nothing else, too many lines or a line that is too long.
     """
+    text = text.replace("\r", "\n")  # lines of very old files end so; those of others have no such character left
     if text.count("\n") > MOST_LINES:
         raise ResponseFileError("too-many-lines", f"{quoted(file)} has more than {MOST_LINES} lines")
     stripped = [line.strip() for line in text.split("\n")]
+    longest = max(range(len(stripped)), key=lambda index: len(stripped[index]))
+    if len(stripped[longest]) > _LONGEST_LINE:
+        sentence = f"{quoted(file)}, line {longest + 1}: the line has more than {_LONGEST_LINE} characters"
+        raise ResponseFileError("too-long", sentence)
     notes = [line[1:] for line in stripped if line.startswith("#")]
     numbers = tuple(number for number, line in enumerate(stripped, 1) if line and not line.startswith("#"))
     if not numbers:
@@ -82,6 +89,9 @@ def columns_below(lines: Lines, separator: str | None, width: int, positions: Se
     Raises ResponseFileError for a line that has not ``width`` fields.
     """
     texts = lines.texts[1:]
+    if len(texts) * width > _MOST_FIELDS:
+        sentence = f"{quoted(lines.file)} has {len(texts)} lines of {width} fields, and {_MOST_FIELDS} fields are read"
+        raise ResponseFileError("too-many-fields", sentence)
     if any('"' in text for text in texts):
         rows = [split_row(lines, index, separator) for index in range(1, len(lines.texts))]
         _require_width(lines, [len(row) for row in rows], width, separator)

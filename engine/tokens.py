@@ -19,7 +19,7 @@ MOST_CHARACTERS = 10_000
 MOST_NESTED = 40
 
 _WORD = re.compile(
-    r"(?P<blank>\s+)"
+    r"(?P<blank>[ \t\r\n]+)"
     r"|(?P<number>(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)"
     r"|(?P<name>[A-Za-z_][A-Za-z0-9_]*)"
     r"|(?P<operator>[-+*/^()])"

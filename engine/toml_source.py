@@ -22,6 +22,7 @@ _MOST_DIGITS = 4300  # of a whole number: the interpreter's own limit for decima
 _PART = r"""(?:[A-Za-z0-9_-]++|"[^"\n]*+"|'[^'\n]*+')"""
 _LONG_KEY = re.compile(rf"(?<![A-Za-z0-9_-]){_PART}(?:[ \t]*+\.[ \t]*+{_PART}){{{_MOST_KEY_PARTS}}}")
 _LONG_NUMBER = re.compile(rf"[0-9_]{{{_MOST_DIGITS + 1}}}")
+_IN_LINE = re.compile(r"Duplicate inline table key '(.*)'")
 _AT_LINE = re.compile(r"\s*\(at line (\d+), column \d+\)$")
 
 
@@ -87,12 +88,23 @@ def _syntax_problem(complaint: str, text: str, file: str) -> Problem:
     number = int(at_line.group(1))
     complaint = complaint[: at_line.start()]
     start = f"{file}, line {number}"
-    written = text.split("\n")[number - 1].partition("=")[0].strip()
-    if complaint.startswith(("Cannot overwrite", "Duplicate inline table key")):
-        return Problem("name-twice", "", f"{start}: {quoted(written)} is given twice in one table")
-    if complaint.startswith("Cannot declare"):
-        return Problem("name-twice", "", f"{start}: the table {quoted(written)} is given twice")
+    twice = _given_twice(complaint, text.split("\n")[number - 1])
+    if twice:
+        return Problem("name-twice", "", f"{start}: {twice}")
     return Problem("not-toml", "", f"{start}: this is no TOML: {_first_low(complaint)}")
+
+
+def _given_twice(complaint: str, line: str) -> str:
+    """A sentence on a key or table given twice, where that is the complaint; ``line`` is where its value ends."""
+    key, equals, _ = line.partition("=")
+    in_line = _IN_LINE.fullmatch(complaint)
+    if in_line:
+        return f"{quoted(in_line.group(1))} is given twice in one table"
+    if complaint.startswith("Cannot declare"):
+        return f"the table {quoted(line.strip())} is given twice"
+    if complaint.startswith("Cannot overwrite"):
+        return f"{quoted(key.strip()) if equals else 'the key of the value that ends here'} is given twice in one table"
+    return ""
 
 
 def _first_low(complaint: str) -> str:
