@@ -42,35 +42,50 @@ class MissedCrossing(ArithmeticError):
     """The crossings found do not explain the proved counts: the curve was sampled too coarsely."""
 
 
+@dataclass(frozen=True, slots=True)
+class Reach:
+    """How far the candidates go: beyond ``lower`` and ``upper`` the loop is undecided at infinity.
+
+    ``complete``: with dead time that turns L for ever, all changes up to this factor are known (``None``: all there are).
+    """
+
+    lower: float | None
+    upper: float | None
+    complete: float | None
+
+
 def gain_ranges(
-    crossings: Sequence[NegativeCrossing], endless: bool, limit: float | None, count: Count, present: int
+    crossings: Sequence[NegativeCrossing], reach: Reach, count: Count, present: int
 ) -> tuple[FactorRange, ...]:
     """Ranges of the factor with Z in each, from 0 to infinity or to where the list may stop; ranges left open are left out.
 
-    ``count`` proves Z for several factors at once (``None``: undecided). ``endless``: infinitely many changes follow (dead
-    time), and the list stops after the second change above 1. ``limit``: from this factor on the loop is undecided at
-    infinity. ``present``: Z at factor 1. Raises MissedCrossing where crossings and counts disagree.
+    ``count`` proves Z for several factors at once (``None``: undecided), ``present`` is Z at factor 1. With infinitely many
+    changes the list stops after the second change above 1. Raises MissedCrossing where crossings and counts disagree.
     """
-    candidates = _candidates(crossings, limit)
-    closed = endless or limit is not None
-    if endless:
-        candidates = _up_to_second_change(candidates)
-    if limit is not None and (not candidates or candidates[-1].factor < limit):
-        candidates.append(_Candidate(limit, math.inf, 0))
-    edges = [_Candidate(0.0, None, 0), *candidates]
-    uppers: list[_Candidate | None] = [*candidates] if closed and candidates else [*candidates, None]
-    probes = [_probe(low.factor, up.factor if up else None) for low, up in zip(edges, uppers, strict=False)]
+    candidates, from_zero = _candidates(crossings, reach)
+    candidates, open_above = _ends(candidates, reach)
+    start = [_Candidate(0.0, None, 0)] if from_zero and reach.lower is None else []
+    if reach.lower is not None:
+        start = [_Candidate(reach.lower, math.inf, 0)]
+    edges = [*start, *candidates]
+    uppers: list[_Candidate | None] = [*edges[1:], None]
+    if not open_above:
+        edges, uppers = edges[:-1], uppers[:-1]
+    probes = [_probe(low.factor, up.factor if up else None) for low, up in zip(edges, uppers, strict=True)]
     counts = count(probes)
-    _check(counts, candidates, probes, present)
+    _check(counts, edges, probes, present)
     return _merge(edges, uppers, counts)
 
 
-def _candidates(crossings: Sequence[NegativeCrossing], limit: float | None) -> list[_Candidate]:
-    """Critical factors, ascending, coincident ones joined; at most those nearest to 1."""
+def _candidates(crossings: Sequence[NegativeCrossing], reach: Reach) -> tuple[list[_Candidate], bool]:
+    """Critical factors, ascending, coincident ones joined, at most those nearest to 1; and whether none below is left out."""
+    lowest, highest = reach.lower or 0.0, reach.upper if reach.upper is not None else math.inf
+    if reach.complete is not None:
+        highest = min(highest, reach.complete)
     found: list[_Candidate] = []
     for crossing in sorted(crossings, key=lambda c: -1.0 / c.value):
         factor = -1.0 / crossing.value
-        if limit is not None and factor >= limit * (1.0 - SAME):
+        if not lowest * (1.0 + SAME) < factor < highest * (1.0 - SAME):
             continue
         if found and factor - found[-1].factor <= SAME * factor:
             last = found[-1]
@@ -78,12 +93,18 @@ def _candidates(crossings: Sequence[NegativeCrossing], limit: float | None) -> l
         else:
             found.append(_Candidate(factor, crossing.omega, crossing.turns))
     kept = sorted(found, key=lambda c: abs(math.log(c.factor)))[:MOST_CANDIDATES]
-    return sorted(kept, key=lambda c: c.factor)
+    kept.sort(key=lambda c: c.factor)
+    return kept, not kept or kept[0] is found[0]
 
 
-def _up_to_second_change(candidates: list[_Candidate]) -> list[_Candidate]:
+def _ends(candidates: list[_Candidate], reach: Reach) -> tuple[list[_Candidate], bool]:
+    """Where the list stops above, and whether a last range without an upper end follows."""
     changes = [i for i, candidate in enumerate(candidates) if candidate.factor > 1.0 and candidate.turns != 0]
-    return candidates[: changes[1] + 1] if len(changes) > 1 else candidates
+    if reach.complete is not None and len(changes) > 1:
+        return candidates[: changes[1] + 1], False
+    if reach.upper is not None:
+        return [*candidates, _Candidate(reach.upper, math.inf, 0)], False
+    return candidates, True
 
 
 def _probe(low: float, up: float | None) -> float:
@@ -96,17 +117,14 @@ def _probe(low: float, up: float | None) -> float:
 
 
 def _check(
-    counts: Sequence[int | None],
-    candidates: Sequence[_Candidate],
-    probes: Sequence[float],
-    present: int,
+    counts: Sequence[int | None], edges: Sequence[_Candidate], probes: Sequence[float], present: int
 ) -> None:
     for probe, found in zip(probes, counts, strict=True):
         if probe == 1.0 and found != present:
             raise MissedCrossing("the count at the present gain differs from the one proved before")
-    for before, after, candidate in zip(counts, counts[1:], candidates, strict=False):
-        if before is not None and after is not None and after - before != candidate.turns:
-            raise MissedCrossing(f"Z changes from {before} to {after} at the factor {candidate.factor}")
+    for before, after, edge in zip(counts, counts[1:], edges[1:], strict=False):
+        if before is not None and after is not None and after - before != edge.turns:
+            raise MissedCrossing(f"Z changes from {before} to {after} at the factor {edge.factor}")
 
 
 def _merge(

@@ -9,7 +9,7 @@ import numpy as np
 
 from encircle.engine.counting import Counter, Gains
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc, negative_crossings, unbounded_arcs
-from encircle.engine.gain_map import FactorRange, MissedCrossing, gain_ranges
+from encircle.engine.gain_map import FactorRange, MissedCrossing, Reach, gain_ranges
 from encircle.engine.margins import margins
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.result import Margins
@@ -54,13 +54,11 @@ def study(
 def _study(
     counter: Counter, loop: OpenLoop, gains: Gains, unstable: int, windings: int | None, unit: float, density: int
 ) -> LoopStudy:
-    far = max(abs(loop.infinity.value), loop.infinity.swing) if loop.infinity.order == 0 else 0.0
-    limit = 1.0 / far if loop.infinity.swing > 0.0 and far > 0.0 else None
-    endless = loop.endless and limit is None
     for smallest in SMALLEST:
         curve = sample_loop(counter, loop, smallest, density)
         crossings = negative_crossings(loop, curve)
-        if not endless or _changes_above(crossings) >= 2:
+        complete = _complete_up_to(loop, curve)
+        if not loop.endless or _changes_between(crossings, 1.0, complete) >= 2:
             break
     arcs = unbounded_arcs(loop, curve)
     if windings is not None:
@@ -69,12 +67,19 @@ def _study(
     def count(factors: Sequence[float]) -> list[int | None]:
         return counter.count_at_factors(loop.stage.part, loop.stage.loop, gains, factors)
 
-    ranges = gain_ranges(crossings, endless, limit, count, unstable)
+    reach = Reach(*loop.infinity.factor_limits(), complete if loop.endless else None)
+    ranges = gain_ranges(crossings, reach, count, unstable)
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, margins(loop, curve, ranges, unit))
 
 
-def _changes_above(crossings: Sequence[NegativeCrossing]) -> int:
-    return sum(1 for crossing in crossings if -1.0 < crossing.value < 0.0 and crossing.turns != 0)
+def _complete_up_to(loop: OpenLoop, curve: SampledCurve) -> float:
+    """The factor below which all crossings are sampled: beyond the last sample |L| stays below its bounds there."""
+    tail = max(float(np.abs(curve.L[-1])), loop.infinity.largest_size())
+    return 1.0 / tail if tail > 0.0 else np.inf
+
+
+def _changes_between(crossings: Sequence[NegativeCrossing], low: float, high: float) -> int:
+    return sum(1 for c in crossings if c.turns != 0 and c.value < 0.0 and low < -1.0 / c.value < high)
 
 
 def _check_windings(crossings: Sequence[NegativeCrossing], arcs: Sequence[UnboundedArc], windings: int) -> None:

@@ -77,8 +77,7 @@ def _phase_margin(loop: OpenLoop, crossovers: FloatArray, unit: float) -> PhaseM
 
 def _delay_margin(loop: OpenLoop, crossovers: FloatArray, unit: float) -> DelayMargin | None:
     """The smallest lag angle over frequency; 0 where lim sup |L| >= 1 at infinity, since any dead time turns it past -1."""
-    far = loop.infinity
-    if far.order > 0 or (far.order == 0 and max(abs(far.value), far.swing) >= 1.0):
+    if loop.infinity.largest_size() >= 1.0:
         return DelayMargin(0.0, None)
     if not len(crossovers):
         return None
@@ -92,27 +91,22 @@ def _least_distance(loop: OpenLoop, curve: SampledCurve) -> tuple[float, float]:
     omega = roots_of(loop, curve, lambda L, slope: (slope / (1.0 + L)).real)
     L, _ = loop.at(omega)
     found = list(zip(np.abs(1.0 + L).tolist(), omega.tolist(), strict=True))
-    for end, place in ((loop.zero, 0.0), (loop.infinity, np.inf)):
-        if end.order == 0:
-            found.append((1.0 - end.swing if end.swing else abs(1.0 + end.value), place))
-        elif (end.order > 0) == (place == 0.0):  # L vanishes there
-            found.append((1.0, place))
+    near = loop.zero
+    if near.order >= 0:
+        found.append((abs(1.0 + near.value) if near.order == 0 else 1.0, 0.0))
+    found.append((loop.infinity.least_distance(), np.inf))
     return min(found)
 
 
 def _largest_complementary(loop: OpenLoop, curve: SampledCurve) -> tuple[float, float]:
-    """The largest |L/(1 + L)| and its frequency in rad/s: inside, at 0, at an axis pole of L or in the limit at infinity."""
+    """The largest |L/(1 + L)| and its frequency in rad/s: inside, at 0, at a pole of L on the axis or at infinity."""
     omega = roots_of(loop, curve, lambda L, slope: (slope / (L * (1.0 + L))).real)
     L, _ = loop.at(omega)
     found = list(zip(np.abs(L / (1.0 + L)).tolist(), (-omega).tolist(), strict=True))
     found += [(1.0, -pole.omega) for pole in loop.poles if pole.omega > 0.0]
-    for end, place in ((loop.zero, 0.0), (loop.infinity, np.inf)):
-        if end.order == 0:
-            size = end.swing / (1.0 - end.swing) if end.swing else abs(end.value / (1.0 + end.value))
-            found.append((size, -place))
-        elif (end.order > 0) == (place > 0.0):  # L is unbounded there
-            found.append((1.0, -place))
-        else:
-            found.append((0.0, -place))
+    near = loop.zero
+    if near.order <= 0:
+        found.append((abs(near.value / (1.0 + near.value)) if near.order == 0 else 1.0, 0.0))
+    found.append((loop.infinity.largest_complementary(), -np.inf))
     size, place = max(found)
     return size, -place

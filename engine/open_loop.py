@@ -13,6 +13,7 @@ from encircle.engine.block_poles import poles_of
 from encircle.engine.closing_order import Stage
 from encircle.engine.coprime_factors import S, IrrationalFactor
 from encircle.engine.counting import Counter, Gains, term_weights
+from encircle.engine.far_end import FarEnd, far_end
 from encircle.engine.loop_determinant import Term
 from encircle.engine.result import ComplexArray, FloatArray
 
@@ -20,21 +21,16 @@ NEAR_ZERO = 1e-9  # where a limit at 0 is taken numerically: this part of the lo
 
 
 @dataclass(frozen=True, slots=True)
-class End:
-    """L at w = 0 or w = infinity: L ~ value * (j w)^order, ``order`` > 0 growing towards infinity.
-
-    At infinity ``swing`` bounds |L| where delayed terms keep turning it (then ``value`` holds only the undelayed part).
-    ``value`` is the finite limit itself when ``order`` is 0.
-    """
+class NearEnd:
+    """L at standstill: L ~ value * (j w)^order; ``value`` is the finite limit itself when ``order`` is 0."""
 
     value: float
     order: float
-    swing: float = 0.0
 
     @property
     def limit(self) -> float | None:
         """The finite real limit, if there is one."""
-        return self.value if self.order == 0 and self.swing == 0.0 else None
+        return self.value if self.order == 0 else None
 
 
 @dataclass(frozen=True, slots=True)
@@ -88,10 +84,10 @@ class OpenLoop:
                 orders[omega] += power
         return tuple(AxisPoleOfLoop(omega, order) for omega, order in sorted(orders.items()))
 
-    def _at_zero(self, terms: Sequence[Term]) -> End:
+    def _at_zero(self, terms: Sequence[Term]) -> NearEnd:
         """Lowest powers of s in A and B; what stands with them gives the value."""
         if self.is_zero:
-            return End(0.0, 0.0)
+            return NearEnd(0.0, 0.0)
         if any(isinstance(factor, IrrationalFactor) for term in terms for factor in term.powers):
             return self._numerical_end()
         power = np.array([term.powers.get(S, 0) for term in terms])
@@ -104,31 +100,20 @@ class OpenLoop:
         A = float(self._weights[0][power == lowest_A] @ plain[power == lowest_A])
         B = float(self._weights[1][power == lowest_B] @ plain[power == lowest_B])
         if A == 0.0:  # the lowest powers cancel: a pole of the open loop at 0 that belongs to no single block
-            return End(np.nan, -1.0)
-        return End(B / A, float(lowest_B - lowest_A))
+            return NearEnd(np.nan, -1.0)
+        return NearEnd(B / A, float(lowest_B - lowest_A))
 
-    def _numerical_end(self) -> End:
+    def _numerical_end(self) -> NearEnd:
         tiny = NEAR_ZERO * self.system.lowest
         L, slope = self.at(np.array([tiny]))
         order = round(float((tiny * slope[0] / L[0]).real) * 64.0) / 64.0
-        return End(float((L[0] / (1j * tiny) ** order).real), order)
+        return NearEnd(float((L[0] / (1j * tiny) ** order).real), order)
 
-    def _at_infinity(self, gains: Gains) -> End:
-        """Leading powers of A and B, summed exactly; delayed parts of the same power only swing."""
+    def _at_infinity(self, gains: Gains) -> FarEnd:
+        """Leading powers of A and B, summed exactly."""
         if self.is_zero:
-            return End(0.0, 0.0)
-        A, B = self._leads(gains, closing=False), self._leads(gains, closing=True)
-        order_A, order_B = max(order for order, _ in A), max(order for order, _ in B)
-        order = float(order_B - order_A)
-        lead_A = A.get((order_A, Fraction(0)), Fraction(0))
-        loose_A = sum(abs(v) for (o, delay), v in A.items() if o == order_A and delay > 0)
-        lead_B = B.get((order_B, Fraction(0)), Fraction(0))
-        loose_B = sum(abs(v) for (o, delay), v in B.items() if o == order_B and delay > 0)
-        if abs(lead_A) <= loose_A:
-            return End(0.0, order, np.inf)
-        if not loose_A and not loose_B:
-            return End(float(lead_B / lead_A), order)
-        return End(float(lead_B / lead_A), order, float((abs(lead_B) + loose_B) / (abs(lead_A) - loose_A)))
+            return FarEnd(0.0, (Fraction(1), Fraction(0)), ())
+        return far_end(self._leads(gains, closing=False), self._leads(gains, closing=True))
 
     def _keeps_turning(self) -> bool:
         """Whether dead time turns L for ever at high frequency: its leading terms are delayed."""

@@ -18,7 +18,7 @@ from encircle.engine.result import ComplexArray, FloatArray
 POINTS_PER_DECADE = 12
 LARGEST_TURN = 0.3  # rad, of L and of 1 + L between neighbours
 LARGEST_GROWTH = 0.6  # of log|L| and log|1 + L|
-MOST_POINTS = 20_000
+MOST_POINTS = 200_000
 MOST_ROUNDS = 30
 FAR = 1e12  # ends are moved outward by at most this factor
 NEAREST_TO_POLE = 1e-8  # relative distance to an axis pole at which a piece of the curve starts
@@ -81,23 +81,40 @@ def _ends(loop: OpenLoop, smallest: float) -> tuple[float, float]:
     steps = 10.0 ** np.arange(0.0, np.log10(FAR) + 1.0)
     below = 0.1 * loop.system.lowest / steps
     L, slope = loop.at(below)
-    settled = _on_asymptote(below, L, slope, loop.zero.order)
+    settled = _on_asymptote(below, L, slope, loop.zero.order, loop.zero.limit)
+    settled &= _beyond_one(L, loop.zero.order)
     lowest = below[np.argmax(settled)] if settled.any() else below[-1]
     above = 10.0 * loop.system.highest * steps
     L, slope = loop.at(above)
-    if loop.delayed:
-        settled = np.abs(L) < smallest if loop.infinity.order < 0 else np.ones(len(above), bool)
+    far = loop.infinity
+    if loop.endless:
+        settled = (np.abs(L) < smallest) | (far.order == 0)
     else:
-        settled = _on_asymptote(above, L, slope, loop.infinity.order)
+        settled = _on_asymptote(above, L, slope, far.order, far.limit) & _beyond_one(L, -far.order)
+    settled |= ~np.isfinite(L)  # above the last measured line nothing is known
     highest = above[np.argmax(settled)] if settled.any() else above[-1]
     return float(lowest), float(highest)
 
 
-def _on_asymptote(omega: FloatArray, L: ComplexArray, slope: ComplexArray, order: float) -> np.ndarray:
-    """d log L/d log omega is close to its limit (an unmeasured value counts as settled: nothing is known beyond)."""
+def _on_asymptote(
+    omega: FloatArray, L: ComplexArray, slope: ComplexArray, order: float, limit: float | None
+) -> np.ndarray:
+    """d log L/d log omega is close to its limit; a finite limit is reached on its own side of |L| = 1."""
     with np.errstate(all="ignore"):
-        local = omega * slope / L
-        return ~(np.abs(local - order) > 1e-3)
+        settled = np.abs(omega * slope / L - order) <= 1e-3
+        if limit is not None:
+            settled &= (np.abs(L) > 1.0) == (abs(limit) > 1.0)
+            settled &= np.abs(omega * slope / (1.0 + L)) <= 1e-3
+            settled |= np.abs(L) == 0.0
+    return settled
+
+
+def _beyond_one(L: ComplexArray, order: float) -> np.ndarray:
+    """Moving outward, |L| has left 1 behind for good: large where it grows without bound, small where it vanishes."""
+    if order == 0.0:
+        return np.ones(len(L), bool)
+    with np.errstate(all="ignore"):
+        return np.abs(L) > 10.0 if order < 0.0 else np.abs(L) < 0.1
 
 
 def _wanted(curve: SampledCurve, smallest: float, finer: int) -> FloatArray:
