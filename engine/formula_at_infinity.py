@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from fractions import Fraction
 
-import numpy as np
-
 from encircle.engine.factored_formula import Analytic, Factor, Function, PrincipalPower, Product, Sum
 from encircle.engine.growth import Exponential, Growth, exponential, off_negative_axis, plain, single_term, unknown
 from encircle.engine.real_interval import RealInterval
@@ -58,7 +56,7 @@ class FarField:
         for growth, m in growths:
             result = result * growth.power(m * alpha)
         sure = off_negative_axis(base.power, growths)
-        return Growth(self._radius, result.terms, np.where(sure, result.bound, np.inf), result.order)
+        return result.where(sure)
 
     def _function(self, factor: Function) -> Exponential:
         argument = self.product(factor.argument).bounded()

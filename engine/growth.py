@@ -110,6 +110,10 @@ class Growth:
         """coefficient s^power times this."""
         return self * single_term(self.radius, coefficient, power)
 
+    def where(self, proved: BoolArray) -> Growth:
+        """The same where ``proved`` holds, nothing known elsewhere."""
+        return Growth(self.radius, self.terms, np.where(proved, self.bound, np.inf), self.order)
+
     def power(self, alpha: Fraction) -> Growth:
         """The power of the leading term times (1 + x)^alpha expanded in x; any branch is left to the caller.
 
@@ -344,7 +348,7 @@ def _trimmed(radius: FloatArray, terms: dict[Fraction, RealInterval], bound: Flo
         bound, order = bound + _size(term, radius), max(order, term[0])
     if bound.any():
         bound = np.where(np.isnan(bound), np.inf, bound * UP)
-    return Growth(radius, kept, bound, order)
+    return Growth(radius, kept, bound, order) if np.isfinite(bound).any() else unknown(radius)
 
 
 def _size(term: Term, radius: FloatArray) -> FloatArray:

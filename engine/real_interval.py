@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
@@ -170,15 +171,34 @@ def _exact_power(base: Fraction, exponent: Fraction) -> Fraction | None:
 
 def _power(base: Fraction, exponent: Fraction) -> tuple[Fraction, Fraction]:
     """Lower and upper bound of base^exponent; argument and exponent are rounded to doubles first."""
-    value = float(base) ** float(exponent)
-    if not 0.0 < value < math.inf:
-        raise OverflowError("a constant of the formula lies outside double precision")
-    loss = Fraction(float(abs(exponent)) * (1.0 + abs(math.log(float(base)))) * 2.0**-50) + FUNCTION_WIDTH
-    return Fraction(value) * (1 - loss), Fraction(value) * (1 + loss)
+    x, alpha = _double(base), float(exponent)
+    value = _in_range(lambda: x**alpha)
+    loss = Fraction(abs(alpha) * (1.0 + abs(math.log(x))) * 2.0**-50) + FUNCTION_WIDTH
+    return value * (1 - loss), value * (1 + loss)
 
 
-def _value(name: FunctionName, x: Fraction) -> tuple[Fraction, Fraction]:
+def _value(name: FunctionName, argument: Fraction) -> tuple[Fraction, Fraction]:
     """Lower and upper bound of an elementary function; rounding the argument to a double is charged too."""
-    value = Fraction({"exp": math.exp, "sinh": math.sinh, "cosh": math.cosh, "tanh": math.tanh}[name](float(x)))
-    loss = FUNCTION_WIDTH + Fraction((1.0 + abs(float(x))) * 2.0**-50)
+    x = _double(argument)
+    value = _in_range(lambda: _FUNCTIONS[name](x))
+    loss = FUNCTION_WIDTH + Fraction((1.0 + abs(x)) * 2.0**-50)
     return value - abs(value) * loss, value + abs(value) * loss
+
+
+_FUNCTIONS = {"exp": math.exp, "sinh": math.sinh, "cosh": math.cosh, "tanh": math.tanh}
+
+
+def _double(value: Fraction) -> float:
+    """The nearest double; below 1e-290 or beyond all doubles is refused."""
+    return float(_in_range(lambda: float(value))) if value else 0.0
+
+
+def _in_range(compute: Callable[[], float]) -> Fraction:
+    """The value computed, which must keep full relative precision as a double."""
+    try:
+        value = compute()
+    except OverflowError:
+        value = math.inf
+    if not 1e-290 < abs(value) < math.inf:
+        raise OverflowError("a constant of the formula lies outside double precision")
+    return Fraction(value)
