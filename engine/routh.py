@@ -1,8 +1,8 @@
 """Routh's array with proven signs: the number of roots right of the imaginary axis.
 
 Entries are decimal numbers with a bound on their error; the working precision grows until every sign in the first
-column is certain. Source of the array: E. J. Routh, "A Treatise on the Stability of a Given State of Motion", 1877; any
-textbook on linear systems.
+column is certain, and where an entry may be exactly 0, remainders in integers decide. Source of the array: E. J. Routh,
+"A Treatise on the Stability of a Given State of Motion", 1877; any textbook on linear systems.
 """
 
 from __future__ import annotations
@@ -10,41 +10,73 @@ from __future__ import annotations
 from collections.abc import Sequence
 from decimal import MAX_EMAX, MIN_EMIN, ROUND_CEILING, ROUND_HALF_EVEN, Context, Decimal
 from itertools import pairwise
-
-from encircle.engine.integer_polynomial import multiply
+from math import gcd
 
 Row = list[tuple[Decimal, Decimal]]  # (value, bound on its error)
 
 _ZERO = Decimal(0)
 _ALMOST_ONE = Decimal("0.999999")
 _UPWARD = Context(prec=9, rounding=ROUND_CEILING, Emax=MAX_EMAX, Emin=MIN_EMIN)
-_DIGITS = (32, 64, 128, 256, 512, 1024, 2048, 4096, 8192)
+_DIGITS = (32, 128, 512)
 
 
 def right_half_plane_roots(coefficients: Sequence[int]) -> int:
     """The number of roots with positive real part, with multiplicity, proved.
 
-    ``coefficients``: ascending, the last not 0, of a polynomial without a pair of roots r, -r (hence without one on the
-    imaginary axis). Raises ArithmeticError where 8192 digits do not settle every sign.
+    ``coefficients``: ascending, the last not 0, of a polynomial without a pair of roots r, -r, hence without one on the
+    imaginary axis; ValueError where the array meets such a pair.
     """
     if len(coefficients) < 2:
         return 0
     for digits in _DIGITS:
-        for helper in _helpers(coefficients):
-            changes = _sign_changes(multiply(coefficients, helper), digits)
-            if changes is not None:
-                return changes
-    raise ArithmeticError("the signs of Routh's array are not settled with 8192 digits")
+        changes = _sign_changes(coefficients, digits)
+        if changes is not None:
+            return changes
+    return _by_remainders(coefficients)
 
 
-def _helpers(coefficients: Sequence[int]) -> tuple[list[int], ...]:
-    """Factors 1, s + a, s + 3a, a near the geometric mean of the roots.
+def _by_remainders(coefficients: Sequence[int]) -> int:
+    """The same for any array, also with zeros in the first column, in integers: slow for large ones.
 
-    A root added on the left changes no count, and removes a zero from the first column for all but finitely many a.
+    With p(jw) = j^n (f(w) - j g(w)) the index of g/f along the axis is the number of roots on the left less that on the
+    right, and the signs of the remainders f, g, -rem(f, g), ... at both ends give it (F. R. Gantmacher, "The Theory of
+    Matrices", ch. XV, quoted from memory).
     """
-    octave = (abs(coefficients[0]).bit_length() - abs(coefficients[-1]).bit_length()) // (len(coefficients) - 1)
-    up, down = 2 ** max(octave, 0), 2 ** max(-octave, 0)
-    return [1], [up, down], [3 * up, down]
+    size = len(coefficients)
+    rows: list[list[int]] = [[0] * size, [0] * (size - 1)]
+    for k, c in enumerate(reversed(coefficients)):
+        rows[k % 2][size - 1 - k] = -c if k % 4 > 1 else c
+    rows[1] = _trimmed(rows[1])
+    while rows[-1]:
+        rows.append(_negative_remainder(rows[-2], rows[-1]))
+    if len(rows[-2]) > 1:
+        raise ValueError("a polynomial with roots r and -r has no regular Routh array")
+    at_plus = [row[-1] > 0 for row in rows[:-1]]
+    at_minus = [positive == (len(row) % 2 == 1) for positive, row in zip(at_plus, rows, strict=False)]
+    index = _changes(at_minus) - _changes(at_plus)
+    return (size - 1 - index) // 2
+
+
+def _negative_remainder(dividend: Sequence[int], divisor: list[int]) -> list[int]:
+    """A positive multiple of -rem(dividend, divisor), without content."""
+    remainder, lead = list(dividend), divisor[-1]
+    while len(remainder) >= len(divisor):
+        ratio, low = remainder[-1] if lead > 0 else -remainder[-1], len(remainder) - len(divisor)
+        shifted = [0] * low + divisor
+        remainder = _trimmed([abs(lead) * r - ratio * d for r, d in zip(remainder, shifted, strict=True)])
+    content = gcd(*remainder)
+    return [-r // content for r in remainder]
+
+
+def _trimmed(ascending: list[int]) -> list[int]:
+    size = len(ascending)
+    while size and not ascending[size - 1]:
+        size -= 1
+    return ascending[:size]
+
+
+def _changes(signs: Sequence[bool]) -> int:
+    return sum(a != b for a, b in pairwise(signs))
 
 
 def _sign_changes(coefficients: Sequence[int], digits: int) -> int | None:
@@ -60,7 +92,7 @@ def _sign_changes(coefficients: Sequence[int], digits: int) -> int | None:
             return None
         signs.append(value.is_signed())
         above, row = row, _next_row(above, row, context, unit)
-    return sum(a != b for a, b in pairwise(signs))
+    return _changes(signs)
 
 
 def _rounded(coefficient: int, context: Context, unit: Decimal) -> tuple[Decimal, Decimal]:
