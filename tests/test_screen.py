@@ -309,7 +309,7 @@ async def test_a_trial_outlives_the_screen_and_can_be_dropped(tmp_path: Path) ->
         await settled(pilot)
         rows = shown_rows(pilot.app)  # type: ignore[arg-type]
         assert (
-            "TRIAL gains of last time are in force again: current +1.00 dB, speed -1.00 dB. R forgets them" in rows[-1]
+            "TRIAL gains of last time are in force again: current +1.00 dB, speed −1.00 dB. R forgets them" in rows[-1]
         )
         assert "TRIAL" in rows[0]
         rows = await press(pilot, "R")

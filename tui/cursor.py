@@ -11,7 +11,7 @@ from encircle.engine.result import LoopCurve
 from encircle.tui.marks import marked_frequencies
 from encircle.tui.picture import Picture
 from encircle.tui.readout import nearest_index, readout
-from encircle.tui.sheet import Ink, Piece, Row, Sheet
+from encircle.tui.sheet import MINUS, Ink, Piece, Row, Sheet
 from encircle.tui.view import View
 from encircle.tui.wording import as_declared, frequency, rounded
 
@@ -61,7 +61,7 @@ def readout_row(picture: Picture, view: View, width: int, *, ascii_only: bool = 
     values = (
         ("", frequency(point.frequency, picture.now.frequency_unit)),
         ("|L|", _decibels(point.magnitude_db)),
-        ("arg L", f"{point.phase_degrees:.1f}°"),
+        ("arg L", f"{point.phase_degrees:.1f}°".replace("-", MINUS)),
         ("|1+L|", rounded(point.distance)),
         ("|S|", _decibels(_in_decibels(sensitivity))),
         ("|T|", _decibels(_in_decibels(complementary))),
@@ -93,7 +93,7 @@ def _gain(picture: Picture) -> list[Piece]:
 
 
 def _decibels(db: float) -> str:
-    return f"{db:+.2f} dB" if math.isfinite(db) else "−∞ dB"
+    return f"{db:+.2f} dB".replace("-", MINUS) if math.isfinite(db) else f"{MINUS}∞ dB"
 
 
 def _in_decibels(magnitude: float) -> float:

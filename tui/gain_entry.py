@@ -9,13 +9,14 @@ _NUMBER = r"(\d+[.,]?\d*(?:[eE][+-]?\d+)?|[.,]\d+(?:[eE][+-]?\d+)?)"
 _VALUE = re.compile(_NUMBER)
 _FACTOR = re.compile(rf"([x×*/])\s*{_NUMBER}")
 _DECIBELS = re.compile(rf"([+\-−])\s*{_NUMBER}\s*(?:dB|db|DB)?")
+LONGEST = 40
 WANTED = "type a value (1.5), a factor (x1.2, /2) or a change (+3 dB)"
 
 
 def typed_gain(text: str, now: float) -> float:
     """The gain that ``text`` asks for, ``now`` being the present one; ``ValueError`` with a sentence if it is none."""
-    words = text.strip()[:40]
-    gain = _asked(words, now)
+    words = text.strip()
+    gain = _asked(words, now) if len(words) <= LONGEST else None
     if gain is None:
         raise ValueError(f"no gain: {WANTED}")
     if not 0 < gain < math.inf:

@@ -14,7 +14,7 @@ from rich.cells import cell_len
 from encircle.engine.result import LoopResult
 from encircle.tui.margin_names import short_finding
 from encircle.tui.picture import Picture
-from encircle.tui.sheet import Ink, Piece, Row, Run, Sheet, padded, row_width
+from encircle.tui.sheet import MINUS, Ink, Piece, Row, Run, Sheet, padded, row_width
 from encircle.tui.tightest_limit import missed_limits, tightest_limit
 from encircle.tui.wording import (
     VERDICT_WORDS,
@@ -125,7 +125,7 @@ def _name_width(sheet: Sheet, picture: Picture, strands_width: int) -> int:
 
 def gain_change(gain: float, filed: float) -> str:
     """A trial gain against the file's: ``+2.0 dB``."""
-    return f"{20 * math.log10(gain / filed):+.2f} dB"
+    return f"{20 * math.log10(gain / filed):+.2f} dB".replace("-", MINUS)
 
 
 def _second_row(sheet: Sheet, picture: Picture, number: int, width: int, trial: Sequence[Piece]) -> None:
@@ -140,7 +140,7 @@ def least_room(loop: LoopResult, frequency_unit: str) -> list[Run]:
     if loop.verdict == "undecided":
         return [(f"undecided: {loop.undecided[0].why}" if loop.undecided else "undecided", Ink.DOUBT)]
     if loop.verdict == "unstable":
-        return [("unstable: no room is left", Ink.BAD)]
+        return [("no room is left", Ink.BAD)]
     finding = tightest_limit(loop)
     if finding is None:
         return [("no limits set", Ink.QUIET)]

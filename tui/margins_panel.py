@@ -48,7 +48,7 @@ def margins_rows(
 
 def _tally(loop: LoopResult) -> str:
     missed = len(missed_limits(loop))
-    return f", {missed} of {len(loop.limits)} limits MISSED" if missed else ""
+    return f", MISSED {missed} of {len(loop.limits)}" if missed else ""
 
 
 def _no_margins(loop: LoopResult) -> str:

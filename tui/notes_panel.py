@@ -24,9 +24,9 @@ def notes_rows(
     sheet = Sheet(width, ascii_only=ascii_only)
     sheet.heading(key, f"{TITLE}{_tally(result)}", chosen=chosen)
     for pole in result.hidden_unstable_poles:
-        sheet.paragraph(f"HIDDEN unstable pole: {_hidden(pole)}; no feedback moves it", Ink.BAD, hanging=3)
+        sheet.paragraph(f"unstable pole: {_hidden(pole)}; no feedback moves it", mark=("HIDDEN", Ink.ALARM), hanging=3)
     for warning in result.warnings:
-        sheet.paragraph(f"! {warning}", Ink.DOUBT, hanging=3)
+        sheet.paragraph(str(warning), mark=("!", Ink.DOUBT), hanging=3)
     _parts(sheet, result, loop)
     _data_files(sheet, result)
     _block_notes(sheet, loop, declarations)

@@ -11,7 +11,7 @@ from enum import StrEnum
 
 from rich.cells import cell_len, set_cell_size
 
-from encircle.engine.text import one_line
+from encircle.engine.text import printable
 from encircle.tui.roles import Role
 from encircle.tui.wording import without_unicode
 
@@ -37,6 +37,8 @@ Piece = Run | str
 Row = tuple[tuple[str, Ink | Role], ...]
 
 RIGHT, LEFT = "r", "l"
+MINUS = "−"
+_BLANKS = str.maketrans("\t\n\r", "   ")
 
 
 class Sheet:
@@ -54,8 +56,7 @@ class Sheet:
 
     def clean(self, text: str) -> str:
         """``text`` with nothing in it that could steer the terminal or that it cannot show."""
-        padded = f"{text}."  # keeps blanks at both ends, which one_line would drop
-        safe = one_line(padded)[:-1] if not text.isprintable() else text
+        safe = text if text.isprintable() else printable(text.translate(_BLANKS))
         return _plain_ascii(safe) if self.ascii_only else safe
 
     def row(self, *pieces: Piece) -> None:
@@ -77,11 +78,21 @@ class Sheet:
         ink = Ink.CHOSEN if chosen else Ink.HEADING
         self.row((mark, Ink.CHOSEN), (f"{key} ", Ink.KEY), (f"{title} ", ink), ("─" * rest, Ink.QUIET))
 
-    def paragraph(self, text: str, ink: Ink = Ink.PLAIN, *, indent: int = 1, hanging: int | None = None) -> None:
-        """Running text, broken between words; ``hanging`` indents the second and later rows."""
+    def paragraph(
+        self, text: str, ink: Ink = Ink.PLAIN, *, indent: int = 1, hanging: int | None = None, mark: Run | None = None
+    ) -> None:
+        """Running text, broken between words; ``hanging`` indents the second and later rows, ``mark`` stands before.
+
+        The mark's text is part of the first row and has an ink of its own.
+        """
         later = indent if hanging is None else hanging
-        for number, line in enumerate(_broken(self.clean(text), self.width - max(indent, later))):
-            self.row((" " * (later if number else indent), Ink.PLAIN), (line, ink))
+        first = self.clean(f"{mark[0]} " if mark else "")
+        lines = _broken(first + self.clean(text), self.width - max(indent, later))
+        for number, line in enumerate(lines):
+            if number:
+                self.row(" " * later, (line, ink))
+            else:
+                self.row(" " * indent, (line[: len(first)], mark[1] if mark else ink), (line[len(first) :], ink))
 
     def table(
         self,

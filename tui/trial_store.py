@@ -14,7 +14,7 @@ from pathlib import Path
 from types import MappingProxyType
 from typing import Any
 
-from encircle.tui.trial import Trial, TrialGain
+from encircle.tui.trial import MOST_TENTHS, Trial, TrialGain
 
 FORMAT = 1
 LARGEST_FILE = 1_000_000
@@ -61,7 +61,7 @@ class TrialStore:
             return _trial(content, loop_names)
         except FileNotFoundError:
             return Trial()
-        except (OSError, ValueError, KeyError, TypeError, AttributeError, RecursionError) as error:
+        except (OSError, ValueError, KeyError, TypeError, AttributeError, RecursionError, OverflowError) as error:
             raise TrialFileError(f"{self.path}: not a trial that this program can read") from error
 
     def _content(self, trial: Trial) -> dict[str, Any]:
@@ -79,6 +79,6 @@ def _trial(content: dict[str, Any], loop_names: tuple[str, ...]) -> Trial:
 
 def _gain(entry: dict[str, Any]) -> TrialGain:
     gain = TrialGain(float(entry["start"]), int(entry["tenths"]))
-    if not 0 < gain.gain < math.inf:
-        raise ValueError("a gain must be above 0 and finite")
+    if abs(gain.tenths) > MOST_TENTHS or not 0 < gain.gain < math.inf:
+        raise ValueError("a gain out of range")
     return gain

@@ -43,8 +43,9 @@ def _sum_row(sheet: Sheet, loop: LoopResult) -> None:
     sheet.row(
         (f" P {before}  +  N {windings}  =  Z {after}   ", Ink.STRONG),
         (VERDICT_WORDS[loop.verdict], VERDICT_INK[loop.verdict]),
-        *([(f"  as the file says: {_intended(loop)}", Ink.QUIET)] if loop.verdict == "as_declared" else []),
     )
+    if loop.verdict == "as_declared":
+        sheet.paragraph(f"the file says that this loop leaves {_intended(loop)}", hanging=3)
 
 
 def _intended(loop: LoopResult) -> str:
@@ -52,14 +53,14 @@ def _intended(loop: LoopResult) -> str:
     if loop.leaves_unstable:
         left.append(plural(loop.leaves_unstable, "unstable pole"))
     if loop.leaves_on_axis:
-        left.append(f"{loop.leaves_on_axis} on the axis")
-    return f"leaves {' and '.join(left)}"
+        left.append(f"{plural(loop.leaves_on_axis, 'pole')} on the axis")
+    return " and ".join(left)
 
 
 def _undecided(sheet: Sheet, loop: LoopResult, unit: str) -> None:
     for stretch in loop.undecided:
         place = f"{frequency(stretch.lower, unit)} to {frequency(stretch.upper, unit)}"
-        sheet.paragraph(f"UNDECIDED {place}: {stretch.why}", Ink.DOUBT, hanging=3)
+        sheet.paragraph(f"{place}: {stretch.why}", mark=("UNDECIDED", Ink.DOUBT), hanging=3)
 
 
 def _crossings(sheet: Sheet, loop: LoopResult, unit: str) -> None:
