@@ -203,7 +203,7 @@ def test_crossings_run_up_to_the_sum() -> None:
         pole_owners=(PoleOwner("rotor", "block", 1), PoleOwner("current", "loop", 1)),
         axis_poles_left=(AxisPole("controller", 0.0),), assumptions=("between two lines rotor stays near its chord",),
     )  # fmt: skip
-    text = "\n".join(" ".join(line.split()) for line in texts(windings_rows(loop, "Hz", 60)))
+    text = " ".join(" ".join(texts(windings_rows(loop, "Hz", 60))).split())
     assert "P 2 + N −1 = Z 1 UNSTABLE" in text
     assert "120.0 Hz −3.210 −2 −2 anticlockwise" in text
     assert "infinity −∞ +1 −1 clockwise" in text
