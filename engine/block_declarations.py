@@ -251,6 +251,9 @@ def _vector(matrices: CheckedTable, key: str, length: int | None) -> tuple[Fract
         entries = entries[0]
     elif key == "B" and entries and all(isinstance(row, list) and len(row) == 1 for row in entries):
         entries = [row[0] for row in entries if isinstance(row, list)]
+    if any(isinstance(entry, list) for entry in entries):
+        matrices.error("bad-shape", key, "has rows that do not fit a block with one input and one output")
+        return None
     if length is not None and len(entries) != length:
         sentence = f"has {len(entries)} entries and needs {length}: a block has one input and one output"
         matrices.error("bad-shape", key, sentence)

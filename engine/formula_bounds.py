@@ -89,6 +89,8 @@ def _arithmetic(symbol: str, left: Extent, right: Extent) -> Extent:
     if left.value is not None and right.value is not None:
         _bounded(0, 0, left.bits + right.bits)
         return _constant(_compute(symbol, left.value, right.value))
+    if symbol == "*" and (left.value == 0 or right.value == 0):
+        return _constant(Fraction(0))
     if symbol == "/":
         if right.value == 0:
             raise FormulaError(None, "something is divided by 0", "division-by-zero")

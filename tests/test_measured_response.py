@@ -36,6 +36,14 @@ def read(text: str | bytes, folder: Path, **columns: str) -> MeasuredResponse:
     return read_response(path, "data.csv", columns)
 
 
+def attempt(text: bytes, folder: Path) -> MeasuredResponse | ResponseFileError:
+    """What becomes of a file: a response or a refusal, and nothing else."""
+    try:
+        return read(text, folder)
+    except ResponseFileError as error:
+        return error
+
+
 def refusal(text: str | bytes, folder: Path, **columns: str) -> str:
     """The sentence with which the file is refused."""
     with pytest.raises(ResponseFileError) as caught:
@@ -237,7 +245,7 @@ def test_binary_and_foreign_encodings_are_refused_with_the_line(tmp_path: Path) 
 
 def test_missing_files_and_directories(tmp_path: Path) -> None:
     (tmp_path / "rotor_frf.csv").write_text(PLAIN)
-    with pytest.raises(ResponseFileError, match="does not exist; the nearest known name is `rotor_frf.csv`"):
+    with pytest.raises(ResponseFileError, match=r"does not exist; .* `rotor_frf\.csv`"):
         read_response(tmp_path / "rotor_fr.csv", "rotor_fr.csv", {})
     with pytest.raises(ResponseFileError, match="does not exist"):
         read_response(tmp_path / "nowhere" / "x.csv", "nowhere/x.csv", {})
@@ -289,10 +297,9 @@ def test_shapes_that_would_cost_much_memory_are_refused(text: str, said: str, tm
 def test_any_file_is_read_or_refused(content: bytes, tmp_path_factory: pytest.TempPathFactory) -> None:
     folder = tmp_path_factory.mktemp("any")
     for text in (content, b"frequency_hz,real,imag\n1,2,3\n" + content):
-        try:
-            found = read(text, folder)
-        except ResponseFileError as error:
-            assert error.sentence.isprintable()
+        found = attempt(text, folder)
+        if isinstance(found, ResponseFileError):
+            assert found.sentence.isprintable()
         else:
             assert len(found.omega) >= 2
             assert np.all(np.diff(found.omega) > 0)
