@@ -1,13 +1,14 @@
 """Certified winding numbers about 0 along the Nyquist contour, of several functions at once.
 
-Each function F is analytic in Re s >= 0, real on the real axis, and given by enclosures on cells of the upper imaginary axis and by
-its behaviour on |s| >= R. Where no enclosure contains 0, the number of zeros in Re s > 0 follows exactly from the
-stand-ins at the ends of the cells (lemma of this module); where one does, the count is undecided, with the place.
+Each function F is analytic in Re s >= 0, real on the real axis, and given by enclosures on cells of the upper
+imaginary axis and by its behaviour on |s| >= R. Where no enclosure contains 0, the number of zeros in Re s > 0
+follows exactly from the stand-ins at the ends of the cells (lemma of this module); where one does, the count is
+undecided, with the place.
 
-Lemma. Let convex sets C_i contain F(cell i), exclude 0 and contain the stand-ins a_i (start) and b_i (end); let each true joint
-value lie in discs about b_i and a_(i+1) that exclude 0. Then 2 pi winding = sum Arg(b_i/a_i) + sum Arg(a_(i+1)/b_i), all
-principal arguments: chord and arc lie in the convex C_i, and a joint turns by less than pi. (Discretisation of the argument
-principle: X. Ying, I. N. Katz, Numer. Math. 53 (1988) 143-163.)
+Lemma. Let convex sets C_i contain F(cell i), exclude 0 and contain the stand-ins a_i (start) and b_i (end); let each
+true joint value lie in discs about b_i and a_(i+1) that exclude 0. Then 2 pi winding = sum Arg(b_i/a_i) + sum
+Arg(a_(i+1)/b_i), all principal arguments: chord and arc lie in the convex C_i, and a joint turns by less than pi.
+(Discretisation of the argument principle: X. Ying, I. N. Katz, Numer. Math. 53 (1988) 143-163.)
 """
 
 from __future__ import annotations
@@ -76,9 +77,9 @@ Enclose = Callable[[FloatArray, FloatArray], Models]
 def count_zeros(enclose: Enclose, endings: list[Ending], edges: FloatArray, lines: FloatArray, lowest: float) -> Counting:
     """Zeros in Re s > 0 of each function that ``enclose`` gives on cells, shape (functions, cells).
 
-    ``edges`` (n + 1,) ascending from 0 to at least every ending's radius, rad/s; an edge that occurs twice makes a cell of
-    width 0 (the step from an asymptote to the first measured line). ``lines``: edges at which a half chord is traversed
-    to its end. ``lowest``: the lowest feature, rad/s, which sets the absolute floor at 0.
+    ``edges`` (n + 1,) ascending from 0 to at least every ending's radius, rad/s; an edge that occurs twice makes a
+    cell of width 0 (the step from an asymptote to the first measured line). ``lines``: edges at which a half chord is
+    traversed to its end. ``lowest``: the lowest feature, rad/s, which sets the absolute floor at 0.
     """
     walk = _Walk(enclose, len(endings), lowest, len(lines) > 0)
     walk.run(edges[:-1], edges[1:])
@@ -128,7 +129,9 @@ class _Walk:
         return _split(lower[~done], upper[~done], crowding[:, ~done].max(axis=0, initial=0.0))
 
     def _give_up_on_data(self, lower: FloatArray, upper: FloatArray, clear: np.ndarray, candidates: np.ndarray) -> None:
-        """Splitting cannot help where the data's own width hides 0 at the centre of the cell; marks such cells clear."""
+        """Splitting cannot help where the data's own width hides 0 at the centre of the cell; marks such cells
+        clear.
+        """
         centre = 0.5 * (lower + upper)[candidates]
         at_centre, _ = exclude_zero(self.enclose(centre, centre))
         hopeless = np.zeros_like(clear)
@@ -167,13 +170,15 @@ class _Walk:
 
 
 def exclude_zero(models: Models) -> tuple[np.ndarray, FloatArray]:
-    """Whether 0 lies outside each enclosure (False also where nothing is proved), and how far the radius crowds the value.
+    """Whether 0 lies outside each enclosure (False also where nothing is proved), and how far the radius crowds the
+    value.
 
-    Without half chords: distance of 0 to the segment {c + d t}, c = v + e/2, against |e|/2 + r, since e t^2 = e/2 (1 + z), |z| <= 1.
+    Without half chords: distance of 0 to the segment {c + d t}, c = v + e/2, against |e|/2 + r, since e t^2 = e/2 (1
+    + z), |z| <= 1.
     """
     with np.errstate(all="ignore"):
         c = models.v + 0.5 * models.e
-        radius = 0.5 * np.abs(models.e) + models.r
+        radius = 0.5 * np.abs(models.e) + models.radius
         if len(models.g):
             distance, radius = _distance_with_chord(c, models.d, models.g, radius)
         else:
@@ -188,10 +193,11 @@ def exclude_zero(models: Models) -> tuple[np.ndarray, FloatArray]:
 def _distance_with_chord(
     c: ComplexArray, d: ComplexArray, g: ComplexArray, radius: FloatArray
 ) -> tuple[FloatArray, FloatArray]:
-    """Lower bound of the distance of 0 to the parallelogram c + d t + g u, g the longest half chord; the others widen the radius.
+    """Lower bound of the distance of 0 to the parallelogram c + d t + g u, g the longest half chord; the others widen
+    the radius.
 
-    For any unit direction n the bound Re(conj(n) c) - |Re(conj(n) d)| - |Re(conj(n) g)| holds; the normals of the sides and
-    the directions to the corners contain the best one.
+    For any unit direction n the bound Re(conj(n) c) - |Re(conj(n) d)| - |Re(conj(n) g)| holds; the normals of the
+    sides and the directions to the corners contain the best one.
     """
     size = np.abs(g)
     longest = np.take_along_axis(g, size.argmax(axis=0)[None], axis=0)[0]
@@ -241,7 +247,9 @@ def _turns(
 
 
 def _zeros(turn: float, first: complex, last: complex, ending: Ending) -> int:
-    """Half the contour turns by -pi for each zero: from the real value at 0 along the axis, then back on the large arc."""
+    """Half the contour turns by -pi for each zero: from the real value at 0 along the axis, then back on the large
+    arc.
+    """
     turn += np.angle(first) if first.real > 0 else np.angle(-first)
     quarter = 1j**ending.order if ending.order == int(ending.order) else np.exp(0.5j * np.pi * ending.order)
     turn += np.angle(ending.lead * quarter / last) - 0.5 * np.pi * ending.order

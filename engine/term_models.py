@@ -42,9 +42,10 @@ NumericArray = TypeVar("NumericArray", FloatArray, ComplexArray)
 
 @dataclass(frozen=True, slots=True)
 class Models:
-    """Enclosures v + d t + e t^2 + sum_m g_m t_m + Disc(0, r), |t|, |t_m| <= 1, arrays (..., cells).
+    """Enclosures v + d t + e t^2 + sum_m (g_m t_m + u_m z_m) + Disc(0, r), arrays (..., cells).
 
-    ``g``, shape (m, ..., cells), holds the half chords of measured blocks between two lines, each with a parameter t_m of its own.
+    ``g``, shape (m, ..., cells), holds the half chords of measured blocks between two lines, ``u`` of the same shape
+    the discs round them; t, t_m in [-1, 1] and z_m complex, |z_m| <= 1, are common to all terms.
     """
 
     v: ComplexArray
@@ -52,11 +53,19 @@ class Models:
     e: ComplexArray
     r: FloatArray
     g: ComplexArray
+    u: ComplexArray
+
+    @property
+    def radius(self) -> FloatArray:
+        """Radius of the disc that holds ``r`` and the discs of all measured blocks."""
+        radius: FloatArray = self.r + np.abs(self.u).sum(axis=0) * (1.0 + SLACK)
+        return radius
 
     def combine(self, weights: FloatArray) -> Models:
         """Linear combinations: ``weights`` (n, terms) of doubles, each with one rounding of its own."""
         size = np.abs(weights)
-        total = size @ (np.abs(self.v) + np.abs(self.d) + np.abs(self.e) + np.abs(self.g).sum(axis=0))
+        bands = np.abs(self.g).sum(axis=0) + np.abs(self.u).sum(axis=0)
+        total = size @ (np.abs(self.v) + np.abs(self.d) + np.abs(self.e) + bands)
         slack = (weights.shape[1] + 4) * SLACK
         radius = size @ self.r * (1.0 + slack) + slack * total + TINIEST
         return Models(
@@ -65,6 +74,7 @@ class Models:
             _real_times(weights, self.e),
             radius,
             _real_times(weights, self.g),
+            _real_times(weights, self.u),
         )
 
 
@@ -75,7 +85,9 @@ def _real_times(weights: FloatArray, values: ComplexArray) -> ComplexArray:
 
 
 class _Factors(NamedTuple):
-    """Models of the single factors, (factors, cells); ``size`` bounds a polynomial's sections coefficient by coefficient."""
+    """Models of the single factors, (factors, cells); ``size`` bounds a polynomial's sections coefficient by
+    coefficient.
+    """
 
     v: ComplexArray
     a: ComplexArray
@@ -141,7 +153,7 @@ class TermModels:
             slope[:count] = (-2.0 * a2 * omega + 1j * a1) / v[:count]
             for i, model in enumerate(self._others, start=count):
                 v[i], change = model.at_points(omega)
-                slope[i] = change / v[i]
+                slope[i] = np.where(v[i] == 0.0, 0.0, change / v[i])
             V = self._reduce(v, 1.0 / v)
             relative = _real_times(self._layout.exponents, slope)
             if self._some_delays[-1] > 0.0:
@@ -204,36 +216,34 @@ class TermModels:
         r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINIEST
         if self._delta.any():
             r += self._delta[:, None] * self._reduce(factors.size, 1.0 / (np.abs(v) * room))
-        g = np.zeros((0, *V.shape), complex)
+        g = u = np.zeros((0, *V.shape), complex)
         if len(chords):
-            g, whole, spread = self._with_bands(V, X, chords, loose)
+            g, u, whole, spread = self._with_bands(V, X, chords, loose)
             r = r * whole + spread
             X = X * whole
         d, e = V * A, V * (B + 0.5 * A * A)
         if fast.any():
             r = np.where(fast, size_V * X * (1.0 + slack) + TINIEST, r)
-            g = np.where(fast, 0.0, g)
+            g, u = np.where(fast, 0.0, g), np.where(fast, 0.0, u)
             V, d, e = (np.where(fast, 0.0, part) for part in (V, d, e))
-        return Models(V, d, e, r, g)
+        return Models(V, d, e, r, g, u)
 
     def _with_bands(
         self, V: ComplexArray, X: FloatArray, chords: ComplexArray, loose: FloatArray
-    ) -> tuple[ComplexArray, FloatArray, FloatArray]:
-        """Half chords of each term, the factor by which bands enlarge it, and what they add to its radius.
+    ) -> tuple[ComplexArray, ComplexArray, FloatArray, FloatArray]:
+        """Half chords and discs of each term, the factor by which bands enlarge it, and what they add to its radius.
 
-        A term with one measured factor keeps the chord as a direction of its own; with several, or one twice, the chords
-        go into the radius.
+        A term is V q(t) prod (1 + c_m t_m + l_m z_m)^p_m with |q - 1| <= X - 1: the bands' linear parts stay apart,
+        what is of second order in them, or of first order in them and in t, goes into the radius.
         """
         power = self._measured_power[:, :, None]
-        size = np.abs(chords)[:, None, :]
-        radius = loose[:, None, :]
+        size, radius = np.abs(chords)[:, None, :], loose[:, None, :]
         whole = np.prod((1.0 + size + radius) ** power, axis=0)
-        alone = self._measured_power.sum(axis=0)[:, None] == 1.0
-        own = (power == 1.0) & alone
-        g = np.where(own, V * chords[:, None, :], 0.0)
-        single = np.where(own, radius * X + size * (X - 1.0), 0.0).sum(axis=0)
-        spread = np.abs(V) * np.where(alone, single, X * (whole - 1.0))
-        return g, whole, spread * (1.0 + 16.0 * SLACK) + SLACK * np.abs(g).sum(axis=0)
+        second = np.maximum(whole - 1.0 - (power * (size + radius)).sum(axis=0), 0.0)
+        second = np.where(self._measured_power.sum(axis=0)[:, None] > 1.0, second + SLACK * whole, 0.0)
+        spread = np.abs(V) * (second + (X - 1.0) * (whole - 1.0)) * (1.0 + 16.0 * SLACK)
+        g, u = V * (power * chords[:, None, :]), V * (power * radius)
+        return g, u, whole, spread + 2.0 * SLACK * (np.abs(g) + np.abs(u)).sum(axis=0)
 
     def _reduce(self, values: NumericArray, reciprocals: NumericArray) -> NumericArray:
         gathered = np.concatenate([values, reciprocals])[self._layout.chosen]

@@ -95,7 +95,7 @@ def _room(counter: Counter, key: PartKey, gains: Gains, omega: float) -> float:
     weights = term_weights(counter.system.determinants[key], gains)[None, :]
     point = np.array([omega])
     models = counter.models((key,)).on_cells(point, point).combine(weights)
-    width = float(np.abs(models.g[:, 0, 0]).sum() + models.r[0, 0])
+    width = float(np.abs(models.g[:, 0, 0]).sum() + models.radius[0, 0])
     return float(np.abs(models.v[0, 0])) / width if np.isfinite(width) and width > 0.0 else 0.0
 
 
