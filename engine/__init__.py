@@ -8,4 +8,14 @@ from encircle.engine.project import Project, open_project
 from encircle.engine.result import LoopCurve, LoopResult, Margins, Result
 from encircle.engine.version import VERSION
 
-__all__ = ["VERSION", "LoopCurve", "LoopResult", "Margins", "Problem", "Project", "ProjectError", "Result", "open_project"]
+__all__ = [
+    "VERSION",
+    "LoopCurve",
+    "LoopResult",
+    "Margins",
+    "Problem",
+    "Project",
+    "ProjectError",
+    "Result",
+    "open_project",
+]

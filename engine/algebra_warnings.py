@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections import Counter, defaultdict
 
-from encircle.engine.coprime_factors import Factor
 from encircle.engine.errors import Problem
 from encircle.engine.loop_system import LoopSystem
 from encircle.engine.polynomial import Polynomial
@@ -19,11 +18,11 @@ def _cancelled(system: LoopSystem) -> list[Problem]:
     """A common factor on or right of the axis that the reduction of one block removed."""
     found = []
     for name, transfer in system.transfers.items():
-        removed = [factor for factor, _ in transfer.cancelled if sum(factor.count_right())]
+        removed = [factor for factor, _ in transfer.cancelled if any(factor.count_right())]
         if removed or transfer.power_cancelled:
             message = (
-                f"block `{name}`: numerator and denominator share a root on or right of the imaginary axis, which was cancelled; "
-                "if the device has that mode, write it as two blocks"
+                f"block `{name}`: numerator and denominator share a root on or right of the imaginary axis, which was "
+                "cancelled; if the device has that mode, write it as two blocks"
             )
             found.append(Problem("cancelled-in-block", f"blocks.{name}", message))
     return found
@@ -40,8 +39,8 @@ def _copied(system: LoopSystem) -> list[Problem]:
     for name in system.declarations.blocks:
         if uses[name] > 1 and _bad(system, name):
             message = (
-                f"block `{name}` has poles on or right of the imaginary axis and is used {uses[name]} times: each use is one more copy of "
-                f"its dynamics; write one device that receives two signals as {name}*(a + b)"
+                f"block `{name}` has poles on or right of the imaginary axis and is used {uses[name]} times: each use "
+                f"is one more copy of its dynamics; write one device that receives two signals as {name}*(a + b)"
             )
             found.append(Problem("unstable-block-copied", f"blocks.{name}", message))
     return found
@@ -49,10 +48,10 @@ def _copied(system: LoopSystem) -> list[Problem]:
 
 def _equal(system: LoopSystem) -> list[Problem]:
     """Equal poles on or right of the axis in two blocks."""
-    holders: dict[Factor, list[str]] = defaultdict(list)
+    holders: dict[Polynomial, list[str]] = defaultdict(list)
     for name in system.declarations.blocks:
         for factor, power in system.factors[name].denominator.items():
-            if power > 0 and isinstance(factor, Polynomial) and sum(factor.count_right()):
+            if power > 0 and isinstance(factor, Polynomial) and any(factor.count_right()):
                 holders[factor].append(name)
     found = []
     for factor, names in holders.items():
@@ -60,8 +59,8 @@ def _equal(system: LoopSystem) -> list[Problem]:
             root = max(factor.roots(), key=lambda r: (r.real, r.imag))
             listed = ", ".join(f"`{name}`" for name in names[:-1]) + f" and `{names[-1]}`"
             message = (
-                f"blocks {listed} all have the pole {_root_text(root)} rad/s: blocks are separate devices, so if two of them "
-                "describe one device, its pole is counted twice"
+                f"blocks {listed} all have the pole {_root_text(root)} rad/s: blocks are separate devices, so if two "
+                "of them describe one device, its pole is counted twice"
             )
             found.append(Problem("equal-poles", f"blocks.{names[0]}", message))
     return found

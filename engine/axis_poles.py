@@ -38,7 +38,7 @@ def left_on_axis(system: LoopSystem, key: PartKey) -> tuple[LeftFactor, ...]:
 def axis_poles_left(system: LoopSystem, stage: Stage) -> tuple[LeftFactor, ...]:
     """As ``left_on_axis`` for a loop's part; owners are sought first among what the open cut left on the axis."""
     kept = {(left.node, left.factor) for key in stage.inner for left in left_on_axis(system, key)}
-    loose = {node for node in stage.lone}
+    loose = set(stage.lone)
     left = []
     for factor, power in system.determinants[stage.part].removed.items():
         on_axis = poles_of({factor: 1}).on_axis

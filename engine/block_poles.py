@@ -12,8 +12,8 @@ from encircle.engine.polynomial import Polynomial
 class FactorPoles:
     """Zeros of a product of polynomial factors, with multiplicity: how many right of the axis, which, and those on it.
 
-    ``right`` counts all; ``unstable`` (rad/s) lists a pair once, im >= 0; ``on_axis`` lists frequencies >= 0 in rad/s, a
-    pair once, so that ``axis_count`` may exceed its length.
+    ``right`` counts all; ``unstable`` (rad/s) lists a pair once, im >= 0; ``on_axis`` lists frequencies >= 0 in
+    rad/s, a pair once, so that ``axis_count`` may exceed its length.
     """
 
     right: int

@@ -1,4 +1,6 @@
-"""The stages of closing: for each loop its part of the diagram, and what that part consisted of before the loop closed."""
+"""The stages of closing: for each loop its part of the diagram, and what that part consisted of before the loop
+closed.
+"""
 
 from __future__ import annotations
 

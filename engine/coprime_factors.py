@@ -1,9 +1,10 @@
 """A block as X = N/M with N and M analytic in Re s >= 0, M bounded and N and M without a common zero there.
 
-M = d/n with the block's own denominator d and a Hurwitz polynomial n of the same degree that stands in for it: sections of
-d that are stable and well damped stay as they are, the others are replaced by damped ones of the same natural frequency.
-Any Hurwitz n is valid: it is a choice, not an approximation (M. Vidyasagar, "Control System Synthesis: A Factorization
-Approach", MIT Press 1985; cited from memory). N and M are kept as products, factor by factor, with integer exponents.
+M = d/n with the block's own denominator d and a Hurwitz polynomial n of the same degree that stands in for it:
+sections of d that are stable and well damped stay as they are, the others are replaced by damped ones of the same
+natural frequency. Any Hurwitz n is valid: it is a choice, not an approximation (M. Vidyasagar, "Control System
+Synthesis: A Factorization Approach", MIT Press 1985; cited from memory). N and M are kept as products, factor by
+factor, with integer exponents.
 """
 
 from __future__ import annotations
@@ -80,7 +81,7 @@ def coprime_factors(transfer: TransferFunction, scale: float) -> CoprimeFactors:
         _raise(below, factor, power)
         for stand_in in hurwitz_stand_ins(factor, scale):
             _raise(normaliser, stand_in, power)
-    common: dict[Factor, int] = {factor: power for factor, power in transfer.numerator}
+    common: dict[Factor, int] = dict(transfer.numerator)
     if _net_power(transfer) > 0 or transfer.unreduced_power:
         _raise(common, S, max(_net_power(transfer), 0) + transfer.unreduced_power)
     for factor, power in normaliser.items():
@@ -106,9 +107,9 @@ def _denominator(transfer: TransferFunction) -> dict[Polynomial, int]:
 def vanishing_order(delayed_sum: tuple[tuple[Fraction, Polynomial], ...]) -> int:
     """The order of the zero at s = 0 of sum n_i(s) exp(-T_i s), exactly; 0 for an empty sum (which stands for 1).
 
-    The m-th Taylor coefficient is sum_i sum_j n_ij (-T_i)^(m-j)/(m-j)!. A nonzero sum of q terms with total degree D has
-    a zero of order at most D + q - 1 (G. Polya, G. Szego, Problems and Theorems in Analysis II, part V, problem 75, from
-    memory), so the search ends.
+    The m-th Taylor coefficient is sum_i sum_j n_ij (-T_i)^(m-j)/(m-j)!. A nonzero sum of q terms with total degree D
+    has a zero of order at most D + q - 1 (G. Polya, G. Szego, Problems and Theorems in Analysis II, part V, problem
+    75, from memory), so the search ends.
     """
     order = 0
     while delayed_sum and _taylor_coefficient(delayed_sum, order) == 0:
@@ -181,6 +182,22 @@ def _times(product: Product, powers: Powers) -> Product:
 
 def _raise(powers: dict[Factor, int], factor: Factor, power: int) -> None:
     powers[factor] = powers.get(factor, 0) + power
+
+
+def one_object_each(factors: Mapping[str, CoprimeFactors]) -> dict[str, CoprimeFactors]:
+    """The same factors with equal ones made the same object: comparing exact polynomials is slow, identity is not."""
+    seen: dict[Factor, Factor] = {}
+
+    def shared(powers: Powers) -> dict[Factor, int]:
+        return {seen.setdefault(factor, factor): power for factor, power in powers.items()}
+
+    def each(products: tuple[Product, ...]) -> tuple[Product, ...]:
+        return tuple(Product(p.gain, shared(p.powers), p.delay) for p in products)
+
+    return {
+        name: CoprimeFactors(each(f.numerator), each(f.numerator_at_infinity), shared(f.denominator))
+        for name, f in factors.items()
+    }
 
 
 def _clean(powers: Powers) -> dict[Factor, int]:

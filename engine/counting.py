@@ -1,4 +1,6 @@
-"""Unstable poles of the parts of a diagram for given factors at the cuts, each count proved or left open with its place."""
+"""Unstable poles of the parts of a diagram for given factors at the cuts, each count proved or left open with its
+place.
+"""
 
 from __future__ import annotations
 
@@ -11,9 +13,10 @@ import numpy as np
 from encircle.engine.block_poles import FactorPoles, poles_of
 from encircle.engine.closing_order import PartKey
 from encircle.engine.encirclement import Ending, OpenCell, count_zeros
-from encircle.engine.high_frequency import FarCause, FarField, FarProduct
+from encircle.engine.high_frequency import FarCause, FarField, FarGrowth, FarProduct
 from encircle.engine.loop_determinant import Determinant
 from encircle.engine.loop_system import LoopSystem
+from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import FloatArray
 from encircle.engine.term_models import TermModels
 
@@ -43,7 +46,7 @@ class Counter:
     def __init__(self, system: LoopSystem) -> None:
         self.system = system
         self._known: dict[tuple[PartKey, tuple[Fraction, ...]], PartCount] = {}
-        self._far = {key: _far_field(system, determinant) for key, determinant in system.determinants.items()}
+        self._far = _far_fields(system)
         self._models: dict[tuple[PartKey, ...], TermModels] = {}
         self._edges: dict[tuple[PartKey, ...], FloatArray] = {}
         self._last_edges: dict[PartKey, FloatArray] = {}
@@ -168,9 +171,15 @@ def _geometric(start: float, stop: float) -> FloatArray:
     return grid
 
 
-def _far_field(system: LoopSystem, determinant: Determinant) -> FarField:
-    products = [FarProduct(term.powers, term.delay, term.coefficient) for term in determinant.far_terms]
-    return FarField(products, system.factor_models, 2.0 * system.highest)
+def _far_fields(system: LoopSystem) -> dict[PartKey, FarField]:
+    """Every part's determinant on the arc at infinity."""
+    products = {
+        key: [FarProduct(term.powers, term.delay, term.coefficient) for term in determinant.far_terms]
+        for key, determinant in system.determinants.items()
+    }
+    factors = (f for found in products.values() for product in found for f in product.powers)
+    growth = FarGrowth((f for f in factors if isinstance(f, Polynomial)), 2.0 * system.highest)
+    return {key: FarField(found, system.factor_models, growth) for key, found in products.items()}
 
 
 def term_weights(determinant: Determinant, gains: Gains) -> FloatArray:

@@ -37,7 +37,10 @@ class UnboundedArc:
     turns: int
 
 
-def roots_of(loop: OpenLoop, curve: SampledCurve, score: Callable[[ComplexArray, ComplexArray], FloatArray]) -> FloatArray:
+Score = Callable[[ComplexArray, ComplexArray], FloatArray]
+
+
+def roots_of(loop: OpenLoop, curve: SampledCurve, score: Score) -> FloatArray:
     """Frequencies where ``score(L, dL/d omega)`` changes sign between neighbours, refined, ascending."""
     with np.errstate(all="ignore"):
         values = score(curve.L, curve.slope)

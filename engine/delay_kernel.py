@@ -1,8 +1,8 @@
 """The delay kernel psi_k(T s), what is left of exp(-T s) when it cancels k poles at 0, on cells of the axis.
 
-psi_k(z) = k! phi_k(-z) with phi_k(y) = sum_m y^m/(m + k)!; phi_k' = phi_k - k phi_(k+1) and y phi_k = phi_(k-1) - 1/(k-1)!
-(the phi functions of exponential integrators: M. Hochbruck, A. Ostermann, Acta Numerica 19 (2010) 209-286; from memory).
-On the axis |psi_k'''| <= 6 / ((k + 1)(k + 2)(k + 3)), the third moment of the density k (1 - x)^(k-1).
+psi_k(z) = k! phi_k(-z) with phi_k(y) = sum_m y^m/(m + k)!; phi_k' = phi_k - k phi_(k+1) and y phi_k = phi_(k-1) -
+1/(k-1)! (the phi functions of exponential integrators: M. Hochbruck, A. Ostermann, Acta Numerica 19 (2010) 209-286;
+from memory). On the axis |psi_k'''| <= 6 / ((k + 1)(k + 2)(k + 3)), the third moment of the density k (1 - x)^(k-1).
 """
 
 from __future__ import annotations
@@ -67,7 +67,8 @@ class DelayKernelModel:
 def _phi(highest: int, y: ComplexArray) -> tuple[list[ComplexArray], list[FloatArray]]:
     """phi_0 ... phi_highest on the imaginary axis with bounds of their errors.
 
-    Upward recurrence from exp(y) where |y| is large, the power series where it is small: the recurrence divides errors by |y|.
+    Upward recurrence from exp(y) where |y| is large, the power series where it is small: the recurrence divides
+    errors by |y|.
     """
     small = np.abs(y) < highest + 2.0
     safe = np.where(small, 1.0, y)

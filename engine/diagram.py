@@ -1,9 +1,9 @@
 """Signal equations to copies of blocks, cuts, and the constant matrix that joins them.
 
 Every use of a block is a copy with an output of its own, every cut wire a node that passes its signal on. All purely
-algebraic signals are eliminated in exact arithmetic, which leaves in_b = sum_c K[b, c] z_c between the nodes: the inputs
-of the nodes as constant combinations of their outputs. The factors at the cuts are not in K; a cut node's column counts
-only while its loop is closed.
+algebraic signals are eliminated in exact arithmetic, which leaves in_b = sum_c K[b, c] z_c between the nodes: the
+inputs of the nodes as constant combinations of their outputs. The factors at the cuts are not in K; a cut node's
+column counts only while its loop is closed.
 """
 
 from __future__ import annotations

@@ -1,4 +1,6 @@
-"""Factors that are no polynomials, as relative Taylor models v (1 + a t + b t^2 + eps) on cells of the imaginary axis."""
+"""Factors that are no polynomials, as relative Taylor models v (1 + a t + b t^2 + eps) on cells of the imaginary
+axis.
+"""
 
 from __future__ import annotations
 

@@ -1,8 +1,8 @@
 """L at infinite frequency: A ~ s^m (a_0 + sum a_i exp(-T_i s)), B ~ s^n (b_0 + sum b_i exp(-T_i s)) with L = B/A.
 
-Where delayed terms of the leading power remain, L keeps turning and has no limit; its bounds follow from |exp(-T_i s)| = 1. With
-one dead time, |p + q z| / |r + t z| on |z| = 1 (real p, q, r, t) is a monotone function of Re z, so its extremes are at z = 1
-and z = -1; with several, triangle inequalities give bounds on the safe side.
+Where delayed terms of the leading power remain, L keeps turning and has no limit; its bounds follow from |exp(-T_i
+s)| = 1. With one dead time, |p + q z| / |r + t z| on |z| = 1 (real p, q, r, t) is a monotone function of Re z, so its
+extremes are at z = 1 and z = -1; with several, triangle inequalities give bounds on the safe side.
 """
 
 from __future__ import annotations

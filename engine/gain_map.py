@@ -1,9 +1,9 @@
 """How Z of a loop's part depends on a factor on top of its gain: ranges from 0 upward, each with a proved count.
 
 Delta = A + g B changes its count only where g = -1/L is real and positive: at crossings of the negative real axis, at
-w = 0 and at w = infinity (D-subdivision: Yu. I. Neimark; E. N. Gryazina, B. T. Polyak, Automatica 42 (2006) 13-26; cited
-from memory). One count is proved inside every interval between neighbouring candidates, and each change is held against
-the turns of the crossings that make it: where they disagree, a crossing was missed.
+w = 0 and at w = infinity (D-subdivision: Yu. I. Neimark; E. N. Gryazina, B. T. Polyak, Automatica 42 (2006) 13-26;
+cited from memory). One count is proved inside every interval between neighbouring candidates, and each change is held
+against the turns of the crossings that make it: where they disagree, a crossing was missed.
 """
 
 from __future__ import annotations
@@ -22,7 +22,9 @@ Count = Callable[[Sequence[float]], list[int | None]]
 
 @dataclass(frozen=True, slots=True)
 class FactorRange:
-    """Z between two factors; the frequencies (rad/s, inf at the far end) belong to the ends, ``None`` where no change is."""
+    """Z between two factors; the frequencies (rad/s, inf at the far end) belong to the ends, ``None`` where no change
+    is.
+    """
 
     lower: float
     upper: float | None
@@ -38,7 +40,7 @@ class _Candidate:
     turns: int
 
 
-class MissedCrossing(ArithmeticError):
+class MissedCrossingError(ArithmeticError):
     """The crossings found do not explain the proved counts: the curve was sampled too coarsely."""
 
 
@@ -46,7 +48,8 @@ class MissedCrossing(ArithmeticError):
 class Reach:
     """How far the candidates go: beyond ``lower`` and ``upper`` the loop is undecided at infinity.
 
-    ``complete``: with dead time that turns L for ever, all changes up to this factor are known (``None``: all there are).
+    ``complete``: with dead time that turns L for ever, all changes up to this factor are known (``None``: all there
+    are).
     """
 
     lower: float | None
@@ -57,10 +60,12 @@ class Reach:
 def gain_ranges(
     crossings: Sequence[NegativeCrossing], reach: Reach, count: Count, present: int
 ) -> tuple[FactorRange, ...]:
-    """Ranges of the factor with Z in each, from 0 to infinity or to where the list may stop; ranges left open are left out.
+    """Ranges of the factor with Z in each, from 0 to infinity or to where the list may stop; ranges left open are
+    left out.
 
-    ``count`` proves Z for several factors at once (``None``: undecided), ``present`` is Z at factor 1. With infinitely many
-    changes the list stops after the second change above 1. Raises MissedCrossing where crossings and counts disagree.
+    ``count`` proves Z for several factors at once (``None``: undecided), ``present`` is Z at factor 1. With
+    infinitely many changes the list stops after the second change above 1. Raises MissedCrossingError where crossings and
+    counts disagree.
     """
     candidates, from_zero = _candidates(crossings, reach)
     candidates, open_above = _ends(candidates, reach)
@@ -78,7 +83,9 @@ def gain_ranges(
 
 
 def _candidates(crossings: Sequence[NegativeCrossing], reach: Reach) -> tuple[list[_Candidate], bool]:
-    """Critical factors, ascending, coincident ones joined, at most those nearest to 1; and whether none below is left out."""
+    """Critical factors, ascending, coincident ones joined, at most those nearest to 1; and whether none below is left
+    out.
+    """
     lowest, highest = reach.lower or 0.0, reach.upper if reach.upper is not None else math.inf
     if reach.complete is not None:
         highest = min(highest, reach.complete)
@@ -121,10 +128,10 @@ def _check(
 ) -> None:
     for probe, found in zip(probes, counts, strict=True):
         if probe == 1.0 and found != present:
-            raise MissedCrossing("the count at the present gain differs from the one proved before")
+            raise MissedCrossingError("the count at the present gain differs from the one proved before")
     for before, after, edge in zip(counts, counts[1:], edges[1:], strict=False):
         if before is not None and after is not None and after - before != edge.turns:
-            raise MissedCrossing(f"Z changes from {before} to {after} at the factor {edge.factor}")
+            raise MissedCrossingError(f"Z changes from {before} to {after} at the factor {edge.factor}")
 
 
 def _merge(

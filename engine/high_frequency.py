@@ -1,16 +1,16 @@
 """Loop determinants on |s| >= R, Re s >= 0: the arc at infinity closed by one disc.
 
-Every product of factors is c s^m exp(-T s) (1 + Disc(rho)) there. The terms of the highest order without dead time, summed
-exactly, make the lead D_0 s^m; where |D_0| exceeds the sum of all the rest, the determinant has no zero on |s| >= R and
-ends in a disc round D_0 s^m that excludes 0. Dead times enter as |exp(-T s)| <= 1, so delayed terms of the same order must
-sum to less than |D_0|: the condition of strong stability of neutral systems (J. K. Hale, S. M. Verduyn Lunel, IMA J. Math.
-Control Inf. 19 (2002) 5-23; cited from memory).
+Every product of factors is c s^m exp(-T s) (1 + Disc(rho)) there. The terms of the highest order without dead time,
+summed exactly, make the lead D_0 s^m; where |D_0| exceeds the sum of all the rest, the determinant has no zero on |s|
+>= R and ends in a disc round D_0 s^m that excludes 0. Dead times enter as |exp(-T s)| <= 1, so delayed terms of the
+same order must sum to less than |D_0|: the condition of strong stability of neutral systems (J. K. Hale, S. M.
+Verduyn Lunel, IMA J. Math. Control Inf. 19 (2002) 5-23; cited from memory).
 """
 
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from enum import Enum
 from fractions import Fraction
@@ -56,15 +56,51 @@ class _Asymptote:
     delay: Fraction
 
 
+class FarGrowth:
+    """Relative discs of polynomials on |s| >= R for an array of radii, as logarithms: found once for a whole
+    project.
+    """
+
+    def __init__(self, polynomials: Iterable[Polynomial], highest: float) -> None:
+        self.radii = highest * 2.0 ** np.arange(DOUBLINGS)
+        unique = list(dict.fromkeys(polynomials))
+        self._place = {polynomial: i for i, polynomial in enumerate(unique)}
+        found = [sections(polynomial) for polynomial in unique]
+        if not found:
+            self._up = self._down = np.empty((0, DOUBLINGS))
+            return
+        spread = _relative_spread(np.concatenate([each.rows for each in found]), self.radii)
+        starts = np.cumsum([0, *(len(each.rows) for each in found[:-1])])
+        delta = np.array([[each.delta] for each in found])
+        with np.errstate(all="ignore"):
+            self._up = np.add.reduceat(np.log1p(spread), starts) + np.log1p(delta)
+            down = -np.add.reduceat(np.log1p(-np.minimum(spread, 1.0)), starts) - np.log1p(-delta)
+            self._down = np.minimum(down, BEYOND)
+
+    def of(self, products: Sequence[FarProduct]) -> FloatArray:
+        """(products, radii): 1 + the relative disc of the polynomials in each product, rounded up."""
+        powers = np.zeros((len(products), len(self._place)))
+        for row, product in enumerate(products):
+            for factor, power in product.powers.items():
+                if isinstance(factor, Polynomial):
+                    powers[row, self._place[factor]] = power
+        logarithm = np.maximum(powers, 0.0) @ self._up + np.maximum(-powers, 0.0) @ self._down
+        slack = 64.0 * UNIT * (1.0 + logarithm + np.abs(powers).sum(axis=1)[:, None])
+        with np.errstate(over="ignore"):
+            growth: FloatArray = np.exp(logarithm) * (1.0 + slack)
+        return growth
+
+
 class FarField:
     """A sum of products on |s| >= R, R = highest * 2^k; built once, asked with changing factors at the cuts."""
 
-    def __init__(self, products: Sequence[FarProduct], models: Mapping[Factor, FactorModel], highest: float) -> None:
-        self.radii = highest * 2.0 ** np.arange(DOUBLINGS)
-        growth = _polynomial_growth(products, self.radii)
+    def __init__(self, products: Sequence[FarProduct], models: Mapping[Factor, FactorModel], growth: FarGrowth) -> None:
+        self.radii = growth.radii
+        discs = growth.of(products)
         self._asymptotes = [
-            _asymptote(product, models, self.radii, growth[i]) for i, product in enumerate(products)
+            _asymptote(product, models, self.radii, disc) for product, disc in zip(products, discs, strict=True)
         ]
+        self._answers: dict[tuple[Fraction, ...], Ending | FarCause] = {}
 
     @property
     def leads(self) -> list[tuple[Fraction, Fraction]]:
@@ -73,6 +109,12 @@ class FarField:
 
     def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         """The ending of sum_i factors[i] * product_i on the smallest radius that serves, or why there is none."""
+        address = tuple(factors)
+        if address not in self._answers:
+            self._answers[address] = self._find_ending(address)
+        return self._answers[address]
+
+    def _find_ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         sums: dict[tuple[Fraction, Fraction], Fraction] = defaultdict(Fraction)
         for term, factor in zip(self._asymptotes, factors, strict=True):
             sums[term.order, term.delay] += term.lead * factor
@@ -107,26 +149,6 @@ class FarField:
         return rest * (1.0 + 64.0 * UNIT * (len(factors) + 4))
 
 
-def _polynomial_growth(products: Sequence[FarProduct], radii: FloatArray) -> FloatArray:
-    """(products, radii): 1 + the relative disc of each product of polynomials, by logarithms of its sections' discs."""
-    polynomials = list(dict.fromkeys(f for p in products for f in p.powers if isinstance(f, Polynomial)))
-    if not polynomials:
-        return np.ones((len(products), len(radii)))
-    up, down = [], []
-    with np.errstate(all="ignore"):
-        for polynomial in polynomials:
-            found = sections(polynomial)
-            spread = np.array([_relative_spread(row, radii) for row in found.rows])
-            up.append(np.log1p(spread).sum(axis=0) + np.log1p(found.delta))
-            shrink = -np.log1p(-np.where(spread < 1.0, spread, 1.0)).sum(axis=0) - np.log1p(-found.delta)
-            down.append(np.minimum(shrink, BEYOND))
-        powers = np.array([[p.powers.get(f, 0) for f in polynomials] for p in products], dtype=float)
-        logarithm = np.maximum(powers, 0.0) @ np.array(up) + np.maximum(-powers, 0.0) @ np.array(down)
-        slack = 64.0 * UNIT * (1.0 + logarithm + np.abs(powers).sum(axis=1)[:, None])
-        growth: FloatArray = np.exp(logarithm) * (1.0 + slack)
-    return growth
-
-
 def _asymptote(
     product: FarProduct, models: Mapping[Factor, FactorModel], radii: FloatArray, growth: FloatArray
 ) -> _Asymptote:
@@ -152,14 +174,14 @@ def _asymptote(
     return _Asymptote(lead, order, (growth - 1.0) * (1.0 + 8.0 * UNIT) + 8.0 * UNIT, product.delay)
 
 
-def _relative_spread(row: FloatArray, radii: FloatArray) -> FloatArray:
-    """|q(s)/(lead s^n) - 1| <= this on |s| >= R."""
-    a2, a1, a0 = (abs(float(value)) for value in row)
-    if a2:
-        return (a1 + a0 / radii) / radii / a2 * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
-    if a1:
-        return a0 / a1 / radii * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
-    return np.full(len(radii), 2.0 * UNIT)
+def _relative_spread(rows: FloatArray, radii: FloatArray) -> FloatArray:
+    """(rows, radii): |q(s)/(lead s^n) - 1| <= this on |s| >= R for sections q."""
+    a2, a1, a0 = np.abs(rows).T[:, :, None]
+    second = a2 != 0.0
+    lead = np.where(second, a2, np.where(a1 != 0.0, a1, a0))
+    next_one = np.where(second, a1, np.where(a1 != 0.0, a0, 0.0))
+    last = np.where(second, a0, 0.0)
+    return (next_one + last / radii) / radii / lead * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
 
 
 def _float_upper(value: Fraction) -> float:

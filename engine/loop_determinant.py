@@ -45,7 +45,8 @@ class Term:
 class Determinant:
     """Delta of one strongly connected part (``nodes``) with the loops ``closed`` closed.
 
-    ``far_terms`` is the same sum written for |s| >= R. ``removed``: factors divided out of all terms, with their powers.
+    ``far_terms`` is the same sum written for |s| >= R. ``removed``: factors divided out of all terms, with their
+    powers.
     """
 
     nodes: frozenset[int]

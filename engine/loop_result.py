@@ -11,6 +11,7 @@ from encircle.engine.axis_poles import LeftFactor, axis_poles_left
 from encircle.engine.closing_order import PartKey, Stage
 from encircle.engine.counting import Counter, Gains, PartCount
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc
+from encircle.engine.declarations import MeasuredBlock
 from encircle.engine.gain_map import FactorRange
 from encircle.engine.limits import judge
 from encircle.engine.loop_study import LoopStudy, study
@@ -90,9 +91,8 @@ def loop_result(
     counts = count_stage(counter, stage, gains, unit)
     windings = None if counts.after is None or counts.before is None else counts.after - counts.before
     on_axis = sum(left.count for left in counts.left) if counts.after is not None else 0
-    verdict = loop_verdict(
-        counts.after, on_axis, declared.leaves_unstable, declared.leaves_on_axis, _contained_later(system, stage, counts)
-    )
+    later = _contained_later(system, stage, counts)
+    verdict = loop_verdict(counts.after, on_axis, declared.leaves_unstable, declared.leaves_on_axis, later)
     loop = OpenLoop(counter, stage, gains)
     studied = study(counter, loop, gains, counts.after, windings, unit) if counts.after is not None else None
     margins = studied.margins if studied and verdict in ("stable", "as_declared") else None
@@ -105,7 +105,7 @@ def loop_result(
         gain=float(gains[stage.loop]),
         verdict=verdict,
         windings=windings,
-        unstable_poles_before=counts.before if counts.after is not None else counts.before,
+        unstable_poles_before=counts.before,
         unstable_poles_after=counts.after,
         pole_owners=counts.owners,
         axis_poles_left=_axis_poles(system, counts.left, unit) if counts.after is not None else (),
@@ -155,19 +155,23 @@ def _evidence(system: LoopSystem, stage: Stage, after: int | None) -> Evidence:
 
 def _assumptions(system: LoopSystem, stage: Stage) -> tuple[str, ...]:
     """What the count rests on besides the models themselves."""
-    sentences = []
-    for block in system.blocks_in(stage.part):
-        if block in system.declared:
-            sentences.append(f"`{block}` has {system.declared[block]} unstable poles, as stated")
-    for model in system.measured_in(stage.part):
-        block, m, n = model.block, model.block.integrators, model.block.roll_off
-        below = {0: "constant"}.get(m, f"k/s^{m}" if m > 0 else f"k*s^{-m}")
-        above = "nothing is assumed above the last" if n is None else f"above the last |H| falls at least as 1/w^{n}"
-        sentences.append(
-            f"`{block.name}`: between two lines H stays within {block.between_lines:g} times their distance of the chord "
-            f"that joins them; below the first line it is {below}; {above}"
-        )
+    sentences = [
+        f"`{name}` has {system.declared[name]} unstable poles, as stated"
+        for name in system.blocks_in(stage.part)
+        if name in system.declared
+    ]
+    sentences += [_band_assumption(model.block) for model in system.measured_in(stage.part)]
     return tuple(sentences)
+
+
+def _band_assumption(block: MeasuredBlock) -> str:
+    m, n = block.integrators, block.roll_off
+    below = {0: "constant"}.get(m, f"k/s^{m}" if m > 0 else f"k*s^{-m}")
+    above = "nothing is assumed above the last" if n is None else f"above the last |H| falls at least as 1/w^{n}"
+    return (
+        f"`{block.name}`: between two lines H stays within {block.between_lines:g} times their distance of the chord "
+        f"that joins them; below the first line it is {below}; {above}"
+    )
 
 
 def _range(found: FactorRange) -> GainRange:

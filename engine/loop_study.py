@@ -9,14 +9,15 @@ import numpy as np
 
 from encircle.engine.counting import Counter, Gains
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc, negative_crossings, unbounded_arcs
-from encircle.engine.gain_map import FactorRange, MissedCrossing, Reach, gain_ranges
+from encircle.engine.gain_map import FactorRange, MissedCrossingError, Reach, gain_ranges
 from encircle.engine.margins import margins
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.result import Margins
 from encircle.engine.sampled_curve import SampledCurve, sample
 
 DENSITIES = (1, 4, 16)
-SMALLEST = (1e-2, 1e-4, 1e-6, 1e-9, 1e-12)  # with dead time L is followed down to these sizes until two changes are found
+# With dead time L is followed down to these sizes until two changes of Z are found
+SMALLEST = (1e-2, 1e-4, 1e-6, 1e-9, 1e-12)
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +47,7 @@ def study(
     for density in DENSITIES:
         try:
             return _study(counter, loop, gains, unstable, windings, unit, density)
-        except MissedCrossing as error:
+        except MissedCrossingError as error:
             reason = error
     raise ArithmeticError(f"crossings and certified counts disagree: {reason}")
 
@@ -85,5 +86,5 @@ def _changes_between(crossings: Sequence[NegativeCrossing], low: float, high: fl
 def _check_windings(crossings: Sequence[NegativeCrossing], arcs: Sequence[UnboundedArc], windings: int) -> None:
     turns = sum(c.turns for c in crossings if c.value < -1.0) + sum(arc.turns for arc in arcs)
     if turns != windings:
-        raise MissedCrossing(f"the crossings left of -1 turn {turns} times, the count says {windings}")
+        raise MissedCrossingError(f"the crossings left of -1 turn {turns} times, the count says {windings}")
 

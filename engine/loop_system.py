@@ -1,6 +1,7 @@
 """A project compiled for counting: diagram, coprime factors, determinants of all stages, enclosures on cells.
 
-Nothing here depends on the factors at the cuts; they enter as weights of the terms, so a gain change needs no new model.
+Nothing here depends on the factors at the cuts; they enter as weights of the terms, so a gain change needs no new
+model.
 """
 
 from __future__ import annotations
@@ -19,6 +20,7 @@ from encircle.engine.coprime_factors import (
     Factor,
     MeasuredFactor,
     coprime_factors,
+    one_object_each,
 )
 from encircle.engine.declarations import Declarations, FormulaBlock, MeasuredBlock
 from encircle.engine.delay_kernel import DelayKernelModel
@@ -33,7 +35,6 @@ from encircle.engine.result import FloatArray
 from encircle.engine.shared_factors import split_shared_factors
 from encircle.engine.transfer_function import TransferFunction, transfer_function
 
-
 HALF_WIDTHS = (-10.0, -3.0, -1.0, -0.3, 0.0, 0.3, 1.0, 3.0, 10.0)
 
 
@@ -41,9 +42,10 @@ HALF_WIDTHS = (-10.0, -3.0, -1.0, -0.3, 0.0, 0.3, 1.0, 3.0, 10.0)
 class LoopSystem:
     """Everything about a project that does not depend on the factors at the cuts.
 
-    ``determinants`` belong to ``order.parts()``. ``poles`` holds, for each block, its poles on and right of the axis; ``declared`` the stated unstable poles of measured
-    and irrational blocks. ``features``: frequencies in rad/s, ascending, near which the slope of something changes; ``resonances``: where to look
-    closely. ``lines``: all measured lines in rad/s, ascending.
+    ``determinants`` belong to ``order.parts()``. ``poles`` holds, for each block, its poles on and right of the axis;
+    ``declared`` the stated unstable poles of measured and irrational blocks. ``features``: frequencies in rad/s,
+    ascending, near which the slope of something changes; ``resonances``: where to look closely. ``lines``: all
+    measured lines in rad/s, ascending.
     """
 
     declarations: Declarations
@@ -100,6 +102,7 @@ def compile_system(declarations: Declarations) -> LoopSystem:
         elif name in irrational:
             factors[name] = irrational[name].coprime_factors(scale)
             models.update(irrational[name].models(scale))
+    factors = one_object_each(factors)
     order = closing_order(diagram)
     builder = DeterminantBuilder(diagram, factors, movable)
     determinants = {key: builder.build(*key) for key in order.parts()}
@@ -167,8 +170,8 @@ def _features(
     for block in declarations.blocks.values():
         if isinstance(block, MeasuredBlock):
             found += [float(block.response.omega[0]), float(block.response.omega[-1])]
-    for block in irrational:
-        found += block.features
+    for formula in irrational:
+        found += formula.features
     usable = np.array(sorted(value for value in found if 1e-100 < value < 1e100))
     return usable if len(usable) else np.ones(1)
 

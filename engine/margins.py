@@ -1,4 +1,6 @@
-"""Margins of a loop known by models: distances to a change of Z along gain, phase and dead time, and extremes of S and T."""
+"""Margins of a loop known by models: distances to a change of Z along gain, phase and dead time, and extremes of S
+and T.
+"""
 
 from __future__ import annotations
 
@@ -71,12 +73,14 @@ def _phase_margin(loop: OpenLoop, crossovers: FloatArray, unit: float) -> PhaseM
     lag = _lag_angles(loop, crossovers)
     smaller = np.minimum(lag, 2.0 * np.pi - lag)
     i = int(np.argmin(smaller))
-    direction = "lag" if lag[i] <= np.pi else "lead"
-    return PhaseMargin(float(np.degrees(smaller[i])), direction, float(crossovers[i]) / unit)
+    degrees, frequency = float(np.degrees(smaller[i])), float(crossovers[i]) / unit
+    return PhaseMargin(degrees, "lag" if lag[i] <= np.pi else "lead", frequency)
 
 
 def _delay_margin(loop: OpenLoop, crossovers: FloatArray, unit: float) -> DelayMargin | None:
-    """The smallest lag angle over frequency; 0 where lim sup |L| >= 1 at infinity, since any dead time turns it past -1."""
+    """The smallest lag angle over frequency; 0 where lim sup |L| >= 1 at infinity, since any dead time turns it past
+    -1.
+    """
     if loop.infinity.largest_size() >= 1.0:
         return DelayMargin(0.0, None)
     if not len(crossovers):

@@ -1,8 +1,8 @@
 """A measured block as a factor: Y(s) = H(s) s^m with m declared integrators, finite at s = 0.
 
-Below the first line Y = k = Re(H (jw)^m) there; at the first line the step from k to the line is a gap of width 0; between two
-neighbouring lines H stays within ``between_lines`` times their distance of the chord that joins them; above the last line
-|H| <= |H_last| (w_last/w)^roll_off, or nothing is assumed.
+Below the first line Y = k = Re(H (jw)^m) there; at the first line the step from k to the line is a gap of width 0;
+between two neighbouring lines H stays within ``between_lines`` times their distance of the chord that joins them;
+above the last line |H| <= |H_last| (w_last/w)^roll_off, or nothing is assumed.
 """
 
 from __future__ import annotations
@@ -79,7 +79,9 @@ class MeasuredModel:
         return v, a, b, np.maximum(eps, 8.0 * UNIT)
 
     def band(self, w: FloatArray, h: FloatArray) -> tuple[ComplexArray, FloatArray]:
-        """Half the chord, and ``between_lines`` times the whole chord as radius; a bound on all of Y above the last line."""
+        """Half the chord, and ``between_lines`` times the whole chord as radius; a bound on all of Y above the last
+        line.
+        """
         place = self.place(w)
         power = np.where(place >= 2, np.abs(w) ** float(self._m), 1.0)
         chord = self._chord[place] * np.where(place >= 2, (1j * w) ** self._m, 1.0)

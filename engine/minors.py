@@ -1,8 +1,9 @@
 """Principal minors of I - X K as sums over disjoint cycles, in exact arithmetic.
 
-det(I - X K) = sum over sets of disjoint cycles of prod(-cycle gain) (S. J. Mason, "Feedback theory - further properties of
-signal flow graphs", Proc. IRE 44 (1956); cited from memory). Grouped by the set S of nodes that the cycles visit:
-coefficient[S] = det(-K[S, S]), so every block of S enters once with its numerator and every other with its denominator.
+det(I - X K) = sum over sets of disjoint cycles of prod(-cycle gain) (S. J. Mason, "Feedback theory - further
+properties of signal flow graphs", Proc. IRE 44 (1956); cited from memory). Grouped by the set S of nodes that the
+cycles visit: coefficient[S] = det(-K[S, S]), so every block of S enters once with its numerator and every other with
+its denominator.
 """
 
 from __future__ import annotations

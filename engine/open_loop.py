@@ -1,4 +1,6 @@
-"""The open-loop response L = g B/A of one loop with the earlier loops closed, at any frequency and at the ends of the axis."""
+"""The open-loop response L = g B/A of one loop with the earlier loops closed, at any frequency and at the ends of the
+axis.
+"""
 
 from __future__ import annotations
 
@@ -11,7 +13,7 @@ import numpy as np
 
 from encircle.engine.block_poles import poles_of
 from encircle.engine.closing_order import Stage
-from encircle.engine.coprime_factors import S, IrrationalFactor
+from encircle.engine.coprime_factors import IrrationalFactor, S
 from encircle.engine.counting import Counter, Gains, term_weights
 from encircle.engine.far_end import FarEnd, far_end
 from encircle.engine.loop_determinant import Term

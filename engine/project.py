@@ -216,7 +216,7 @@ class Project:
                 signals = [system.diagram.homes[node] for node in sorted(key[0]) if node < len(system.diagram.blocks)]
                 named = ", ".join(f"`{signal}`" for signal in dict.fromkeys(signals))
                 message = (
-                    f"the feedback through {named} tends to 1 + L = 0 at infinite frequency without dead time, so it has no "
-                    "solution there: put the dynamics that the devices have at high frequency into their blocks"
+                    f"the feedback through {named} tends to 1 + L = 0 at infinite frequency without dead time, so it "
+                    "has no solution there: put the dynamics that the devices have at high frequency into their blocks"
                 )
                 raise ProjectError(Problem("algebraic-loop", "signals", message))

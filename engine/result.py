@@ -24,7 +24,9 @@ ComplexArray = NDArray[np.complex128]
 
 @dataclass(frozen=True, slots=True)
 class AxisPole:
-    """A block's pole on the imaginary axis that closing the loop leaves there; ``frequency`` >= 0 stands for the pair."""
+    """A block's pole on the imaginary axis that closing the loop leaves there; ``frequency`` >= 0 stands for the
+    pair.
+    """
 
     block: str
     frequency: float

@@ -1,9 +1,9 @@
 """The curve of L sampled finely enough that between two neighbours nothing is missed that a model can show.
 
-Points are placed at features of the blocks and where certified cells had to be narrow, the ends are moved outward until L
-follows its asymptotes, and neighbours are halved until L and 1 + L turn and grow by little from one to the next. What
-decides a verdict is the certified count; the samples only locate crossings and extremes, and the crossings found are
-checked against the count.
+Points are placed at features of the blocks and where certified cells had to be narrow, the ends are moved outward
+until L follows its asymptotes, and neighbours are halved until L and 1 + L turn and grow by little from one to the
+next. What decides a verdict is the certified count; the samples only locate crossings and extremes, and the crossings
+found are checked against the count.
 """
 
 from __future__ import annotations
@@ -26,7 +26,9 @@ NEAREST_TO_POLE = 1e-8  # relative distance to an axis pole at which a piece of 
 
 @dataclass(frozen=True, slots=True)
 class SampledCurve:
-    """``omega`` (n,) ascending in rad/s, ``L`` and ``slope`` = dL/d omega (n,); ``breaks``: axis poles between the pieces."""
+    """``omega`` (n,) ascending in rad/s, ``L`` and ``slope`` = dL/d omega (n,); ``breaks``: axis poles between the
+    pieces.
+    """
 
     omega: FloatArray
     L: ComplexArray

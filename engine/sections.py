@@ -1,8 +1,9 @@
-"""Exact polynomials as products of first- and second-order sections in double precision, with a bound on the difference.
+"""Exact polynomials as products of first- and second-order sections in double precision, with a bound on the
+difference.
 
-A section is a row (a2, a1, a0) of doubles. A polynomial p with sections q_1 ... q_m obeys, for every s,
-|p(s) - prod q_i(s)| <= delta * prod S_i(|s|) with S_i(x) = |a2| x^2 + |a1| x + |a0|: the residual is computed exactly and
-compared with prod S_i coefficient by coefficient. For one section delta is the rounding of its coefficients.
+A section is a row (a2, a1, a0) of doubles. A polynomial p with sections q_1 ... q_m obeys, for every s, |p(s) - prod
+q_i(s)| <= delta * prod S_i(|s|) with S_i(x) = |a2| x^2 + |a1| x + |a0|: the residual is computed exactly and compared
+with prod S_i coefficient by coefficient. For one section delta is the rounding of its coefficients.
 """
 
 from __future__ import annotations
@@ -20,7 +21,9 @@ from encircle.engine.rounding import UNIT
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Sections:
-    """``rows`` (m, 3) of (a2, a1, a0); ``delta`` bounds the difference, 0 where the evaluation's own slack covers it."""
+    """``rows`` (m, 3) of (a2, a1, a0); ``delta`` bounds the difference, 0 where the evaluation's own slack covers
+    it.
+    """
 
     rows: FloatArray
     delta: float

@@ -1,8 +1,8 @@
 """Factors by which poles can be hidden: a gcd-free basis of all denominators that are not clearly Hurwitz.
 
-A pole of one block that a zero of another cancels, or an integrator whose pole no feedback moves, shows as a polynomial factor common to
-all terms of a determinant. To see it, such factors must stand as factors of their own in every block: coincidence is exact
-equality of roots, found by exact greatest common divisors.
+A pole of one block that a zero of another cancels, or an integrator whose pole no feedback moves, shows as a
+polynomial factor common to all terms of a determinant. To see it, such factors must stand as factors of their own in
+every block: coincidence is exact equality of roots, found by exact greatest common divisors.
 """
 
 from __future__ import annotations
