@@ -210,7 +210,7 @@ def test_a_number_that_is_not_finite_is_a_fault_and_nothing_is_printed(
     assert "errors" in json.loads(capsys.readouterr().out)
 
 
-def test_ctrl_c_ends_with_130(opening: Opening, capsys: pytest.CaptureFixture[str]) -> None:
+def test_ctrl_c_ends_with_130(opening: Opening, capfd: pytest.CaptureFixture[str]) -> None:
     opening(DRIVE)
 
     def interrupted(path: str) -> None:
@@ -218,7 +218,7 @@ def test_ctrl_c_ends_with_130(opening: Opening, capsys: pytest.CaptureFixture[st
 
     encircle.engine.open_project = interrupted  # type: ignore[assignment]  # undone by the fixture
     assert main(["check", "x"]) == 130
-    assert capsys.readouterr().err == "encircle: interrupted\n"
+    assert capfd.readouterr().err == "encircle: interrupted\n"
 
 
 # --- whole processes --------------------------------------------------------------------------------------------------

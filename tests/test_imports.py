@@ -18,7 +18,18 @@ DRIVE_FILE = Path(__file__).parent.parent / "examples" / "drive" / "drive.toml"
 SCREEN_LIBRARIES = {"textual", "rich", "plotext"}
 PACKAGES = ("encircle.engine", "encircle.tui")
 # Modules of the command line that must not reach the screen.
-REPORT_MODULES = ("arguments", "check_table", "command_line", "loop_report", "margin_table", "output", "plain_text")
+REPORT_MODULES = (
+    "arguments",
+    "check_table",
+    "command_line",
+    "commands",
+    "loop_report",
+    "margin_table",
+    "output",
+    "plain_text",
+    "result_json",
+    "wording",
+)
 
 
 @cache
@@ -145,3 +156,16 @@ def test_check_loads_numpy_and_little_else(form: str) -> None:
 def test_help_does_not_wait_for_numpy() -> None:
     loaded = loaded_after('from encircle.tui.command_line import main\nmain(["--help"])')
     assert not loaded & (SCREEN_LIBRARIES | {"numpy", "argparse"})
+
+
+def test_the_entry_loads_nothing_before_it_listens_to_ctrl_c() -> None:
+    started = loaded_after("")
+    loaded = loaded_after("import encircle.tui.command_line")
+    assert {name for name in loaded - started if not name.startswith("__editable__")} <= {
+        "encircle",
+        "encircle.tui",
+        "encircle.tui.command_line",
+        "__future__",
+        "importlib.machinery",
+        "importlib.util",
+    }
