@@ -266,6 +266,8 @@ async def test_a_failed_count_is_told_and_the_last_good_picture_stays() -> None:
         assert "ArithmeticError" in rows[-1]
         assert "\\x1b[31m" in rows[-1]
         assert "71.27°" in "\n".join(rows)
+        rows = await press(pilot, "right")
+        assert "COUNT FAILED" in rows[-1]
         rows = await press(pilot, "r")
         assert "COUNT FAILED" not in "\n".join(rows)
 

@@ -25,6 +25,7 @@ from encircle.tui.footer import footer_row
 from encircle.tui.gain_entry import WANTED, typed_gain
 from encircle.tui.line_panel import LinePanel
 from encircle.tui.loop_ladder import gain_change
+from encircle.tui.output import complain
 from encircle.tui.palette import colour_wanted, palette
 from encircle.tui.panels import Showing, panel_rows, signature, text_rows
 from encircle.tui.picture import LoopProject, Picture
@@ -80,6 +81,7 @@ class EncircleApp(App[int]):
         self._answer: Future[Picture] | None = None
         self._shown: dict[Panel, tuple[object, ...]] = {}
         self._notice = ""
+        self._failure = ""
         self._extent = Size(80, 24)
         self._stop_listening: Callable[[], None] = lambda: None
         self._handlers: Mapping[str, Callable[[], None]] = self._all_handlers()
@@ -305,21 +307,25 @@ class EncircleApp(App[int]):
         return picture_of(self._project, applied(self._project, trial), chosen, superseded)
 
     def on_counted(self, event: Counted) -> None:
-        """A long count has ended; only the newest one is of interest."""
-        if event.answer is self._answer:
-            with self.batch_update():
-                self._accept(event.answer)
-                self._draw()
+        """A long count has ended. While a key is held down, older ones show the way to the newest."""
+        with self.batch_update():
+            self._accept(event.answer)
+            self._draw()
 
     def _accept(self, answer: Future[Picture]) -> None:
         """Take the picture, or say why there is none and keep the last good one."""
+        if answer is self._answer:
+            self._answer = None
         try:
-            self._picture = answer.result()
+            picture = answer.result()
         except (SupersededError, CancelledError):
             return
         except Exception as error:  # a fault of the engine must neither end the screen nor go unseen
-            self._notice = f"COUNT FAILED, what is shown is older: {type(error).__name__}: {error}"
-        self._answer = None
+            self._failure = f"COUNT FAILED, what is shown is older: {type(error).__name__}: {error}"
+        else:
+            self._failure = ""
+            if picture.chosen == self._view.loop:
+                self._picture = picture
 
     # ---- drawing ---------------------------------------------------------------------------------------------------
 
@@ -349,9 +355,11 @@ class EncircleApp(App[int]):
                 self._show_panel(widget, place, showing)
         self._draw_line("title", 0, self._title(width))
         if showing is not None:
-            readout = readout_row(showing.picture, self._view, width, ascii_only=self._ascii_only)
+            gain = self._trial.gain(self._loop_name, self._filed_gain)
+            readout = readout_row(showing.picture, self._view, gain, width, ascii_only=self._ascii_only)
             self._draw_line("readout", height - 2, readout)
-        self._draw_line("footer", height - 1, footer_row(width, notice=self._notice, ascii_only=self._ascii_only))
+        notice = self._notice or self._failure
+        self._draw_line("footer", height - 1, footer_row(width, notice=notice, ascii_only=self._ascii_only))
 
     def _show_panel(self, widget: LinePanel, place: Placement, showing: Showing) -> None:
         """Rows are made again only where something that they depend on has changed."""
@@ -384,7 +392,7 @@ def run_screen(project: LoopProject) -> int:
     """
     reason = terminal_session.why_no_screen(sys.__stdin__, sys.__stderr__)
     if reason is not None:
-        terminal_session.complain(reason)
+        complain(f"encircle: {reason}")
         return 2
     declarations = project.declarations
     store = TrialStore(declarations.file, declarations.sha256)

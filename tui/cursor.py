@@ -53,8 +53,8 @@ def next_mark(picture: Picture, index: int, direction: int) -> float | None:
     return places[min(beyond, key=lambda place: abs(place - index))] if beyond else None
 
 
-def readout_row(picture: Picture, view: View, width: int, *, ascii_only: bool = False) -> Row:
-    """The values at the cursor, in one row; at the right the gain of the chosen loop."""
+def readout_row(picture: Picture, view: View, gain: float, width: int, *, ascii_only: bool = False) -> Row:
+    """The values at the cursor, and at the right the gain of the chosen loop, which may be ahead of what is counted."""
     index = cursor_index(picture, view)
     point = readout(picture.curve, index)
     sensitivity, complementary = abs(picture.curve.S[index]), abs(picture.curve.T[index])
@@ -67,9 +67,9 @@ def readout_row(picture: Picture, view: View, width: int, *, ascii_only: bool = 
         ("|T|", _decibels(_in_decibels(complementary))),
     )
     sheet = Sheet(width, ascii_only=ascii_only)
-    gain = _gain(picture)
-    room = width - sum(len(piece if isinstance(piece, str) else piece[0]) for piece in gain)
-    sheet.split_row(_that_fit(values, room), gain)
+    ending = _gain(gain, picture.filed.loops[view.loop].gain)
+    room = width - sum(len(piece if isinstance(piece, str) else piece[0]) for piece in ending)
+    sheet.split_row(_that_fit(values, room), ending)
     return sheet.rows[0]
 
 
@@ -85,11 +85,10 @@ def _that_fit(values: Iterable[tuple[str, str]], room: int) -> list[Piece]:
     return pieces
 
 
-def _gain(picture: Picture) -> list[Piece]:
-    now, filed = picture.loop, picture.loop_filed
-    if now.gain == filed.gain:
-        return [("gain ", Ink.QUIET), (as_declared(now.gain), Ink.STRONG), " "]
-    return [(f"gain {rounded(now.gain)}, file {as_declared(filed.gain)} ", Ink.TRIAL)]
+def _gain(gain: float, filed: float) -> list[Piece]:
+    if gain == filed:
+        return [("gain ", Ink.QUIET), (as_declared(gain), Ink.STRONG), " "]
+    return [(f"gain {rounded(gain)}, file {as_declared(filed)} ", Ink.TRIAL)]
 
 
 def _decibels(db: float) -> str:

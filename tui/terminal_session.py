@@ -8,7 +8,6 @@ from __future__ import annotations
 import asyncio
 import os
 import signal
-import sys
 from collections.abc import Callable, Mapping, MutableMapping
 from typing import TextIO
 
@@ -45,16 +44,19 @@ def ascii_only(display: TextIO | None) -> bool:
 
 
 def leave_on_signals(leave: Callable[[int], None]) -> Callable[[], None]:
-    """Call ``leave`` with 128 + n when the line drops or the process is told to end; returns how to stop listening."""
+    """Call ``leave`` with 128 + n when the line drops or the process is told to end; returns how to stop listening.
+
+    The handlers also undo an inherited "ignore", with which a dropped line would leave a process that never ends.
+    """
     loop = asyncio.get_running_loop()
     for number in LEAVING_SIGNALS:
         loop.add_signal_handler(number, leave, 128 + number)
-    return lambda: [loop.remove_signal_handler(number) for number in LEAVING_SIGNALS].clear()
 
+    def stop_listening() -> None:
+        for number in LEAVING_SIGNALS:
+            loop.remove_signal_handler(number)
 
-def complain(sentence: str) -> None:
-    """One line on standard error."""
-    print(f"encircle: {sentence}", file=sys.stderr)
+    return stop_listening
 
 
 prepare()

@@ -11,6 +11,7 @@ TERMS: tuple[tuple[str, str], ...] = (
     ("Z", "unstable poles after closing, P + N; stable: Z = 0"),
     ("strands", "│ unstable pole ┴ caught by the loop ┬ made by it; what hangs below the outermost loop is left"),
     ("* ▲ ▼", "gain on trial; grown, shrunk against the file"),
+    ("○ ◇ ●", "crossover, margin, cursor; disc: a limit forbids it"),
     ("as declared", "leaves the poles that the file says it should"),
     ("undecided", "cannot be proved either way; nothing is claimed"),
     ("proved", "the count holds on the whole contour, for models"),
