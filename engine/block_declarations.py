@@ -185,16 +185,15 @@ def _root_list(table: CheckedTable, key: str) -> tuple[_Root, ...] | None:
 
 def _root(table: CheckedTable, key: str, place: int, value: object) -> _Root | None:
     """A number, or ``[re, im]``, which stands for the pair."""
-    which = f"root {place}, "
     if not isinstance(value, list):
-        real = table.numbers_in(key, [value], which)
-        return None if real is None else (real[0], _ZERO)
+        real = table.number_in(key, value, f"root {place} ")
+        return None if real is None else (real, _ZERO)
     if len(value) != 2:
-        table.error("bad-root", key, f"{which}a complex root is written `[re, im]`, two numbers")
+        table.error("bad-root", key, f"root {place} is no pair; a complex root is written `[re, im]`")
         return None
-    pair = table.numbers_in(key, value, which)
+    pair = table.numbers_in(key, value, f"root {place}, ")
     if pair is not None and pair[1] == 0:
-        table.error("bad-root", key, f"{which}`[re, 0]` is no pair; write a real root as a plain number")
+        table.error("bad-root", key, f"root {place} is `[re, 0]`, no pair; write a real root as a plain number")
         return None
     return None if pair is None else (pair[0], pair[1])
 

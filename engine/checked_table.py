@@ -80,11 +80,12 @@ class CheckedTable:
         """Note every key that is not in ``known``; ``what`` names the table's kind, as in "a loop"."""
         for key in self.content:
             if key not in known:
-                self.error("unknown-key", key, f"is no key of {what}{nearest_known(key, known)}")
+                instead = nearest_known(key, known) or f"; the keys are {listed(known)}"
+                self.error("unknown-key", key, f"is no key of {what}{instead}")
 
     def number(self, key: str) -> Fraction | None:
         """A finite number, exactly as written."""
-        return self._number(key, self.content.get(key), "")
+        return self.number_in(key, self.content.get(key), "")
 
     def number_or_stand_in(self, key: str) -> Fraction:
         """A finite number; where it cannot be used, which is noted, another one so that reading can go on."""
@@ -150,7 +151,7 @@ class CheckedTable:
 
     def numbers_in(self, key: str, values: Sequence[object], prefix: str) -> tuple[Fraction, ...] | None:
         """The numbers of an array that stands in ``key``; ``prefix`` says which, as in "row 2, "."""
-        found = [self._number(key, value, f"{prefix}entry {place}: ") for place, value in enumerate(values, 1)]
+        found = [self.number_in(key, value, f"{prefix}entry {place} ") for place, value in enumerate(values, 1)]
         numbers = tuple(value for value in found if value is not None)
         return numbers if len(numbers) == len(found) else None
 
@@ -163,7 +164,8 @@ class CheckedTable:
         where = self.place.key(key_shown(key))
         return CheckedTable(Place(where, title or f"[{where}]"), value, self.mistakes)
 
-    def _number(self, key: str, value: object, entry: str) -> Fraction | None:
+    def number_in(self, key: str, value: object, entry: str) -> Fraction | None:
+        """A finite number that stands somewhere in ``key``; ``entry`` says where, as in "entry 2 "."""
         if isinstance(value, RefusedDecimal):
             self.error("number-range", key, f"{entry}{value.reason}")
         elif isinstance(value, bool) or not isinstance(value, int | Fraction):

@@ -7,7 +7,7 @@ feedback that reaches no cut) comes later.
 from __future__ import annotations
 
 import os
-from collections.abc import Iterable, Mapping
+from collections.abc import Collection, Iterable, Mapping, Sequence
 from fractions import Fraction
 from pathlib import Path
 from typing import Final, cast
@@ -76,10 +76,10 @@ def _read(root: CheckedTable, source: Source, file: str, folder: Path) -> Declar
     inputs = _inputs(root)
     tables = {key: _table_of_names(root, key) for key in _TABLES}
     named = _named_things(inputs, tables)
-    _check_names(root, named)
+    ambiguous = _check_names(root, named)
     parameters = _parameters(tables["parameters"])
     blocks = _blocks(tables["blocks"], Surroundings(parameters, folder))
-    signals = _signals(root, tables, inputs, parameters)
+    signals = _signals(root, tables, inputs, parameters, ambiguous)
     limits_table = root.table("limits") if root.has("limits") else None
     limits = read_limits(limits_table) if limits_table else {}
     others = {thing.name: thing.kind for thing in named if thing.kind != "a signal"}
@@ -128,13 +128,15 @@ def _named_things(inputs: Iterable[str], tables: Mapping[str, CheckedTable | Non
     return named
 
 
-def _check_names(root: CheckedTable, named: Iterable[NamedThing]) -> None:
-    things = list(named)
-    for thing in things:
+def _check_names(root: CheckedTable, named: Sequence[NamedThing]) -> set[str]:
+    """Note names that cannot be names or are given twice; the latter are returned."""
+    for thing in named:
         if complaint := complaint_about(thing.name):
             _name_error(root, "bad-name", thing, f"{quoted(thing.name)} {complaint}")
-    for earlier, later in repeated(things):
+    pairs = repeated(named)
+    for earlier, later in pairs:
         _name_error(root, "name-twice", later, twice(earlier, later))
+    return {later.name for _, later in pairs}
 
 
 def _name_error(root: CheckedTable, code: str, thing: NamedThing, sentence: str) -> None:
@@ -162,7 +164,9 @@ def _signals(
     tables: Mapping[str, CheckedTable | None],
     inputs: tuple[str, ...],
     parameters: Mapping[str, Fraction],
+    ambiguous: Collection[str],
 ) -> dict[str, tuple[Term, ...]]:
+    """The equations; those with names given twice, which are mistakes already, are left out."""
     table, blocks = tables["signals"], tables["blocks"]
     if table is None or not table.content:
         if table is not None or not root.has("signals"):
@@ -173,16 +177,18 @@ def _signals(
         blocks=dict.fromkeys(blocks.content if blocks else ()),
         parameters=parameters,
     )
-    equations = {name: _equation(table, name, vocabulary) for name in table.content}
+    equations = {name: _equation(table, name, vocabulary, ambiguous) for name in table.content}
     return {name: terms for name, terms in equations.items() if terms is not None}
 
 
-def _equation(table: CheckedTable, name: str, vocabulary: Vocabulary) -> tuple[Term, ...] | None:
+def _equation(
+    table: CheckedTable, name: str, vocabulary: Vocabulary, ambiguous: Collection[str]
+) -> tuple[Term, ...] | None:
     text = table.text(name)
     if text is None:
         return None
     try:
-        return parse_equation(text, vocabulary)
+        return None if ambiguous and not set(names_in(text)).isdisjoint(ambiguous) else parse_equation(text, vocabulary)
     except FormulaError as error:
         if error.code != "unknown-name" or not _unknown_names(table, name, text, vocabulary):
             at = f", character {error.position}" if error.position else ""

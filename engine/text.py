@@ -42,8 +42,8 @@ def nearest_known(name: str, known: Iterable[str]) -> str:
     """A clause that names the known name nearest to ``name``; empty where none is near."""
     if len(name) > SHOWN_LENGTH:
         return ""
-    # Names much longer or shorter cannot be near; the cap keeps a hostile file from buying quadratic time.
-    candidates = [other for other in known if other != name and abs(len(other) - len(name)) <= 4][:_COMPARED_NAMES]
+    # The caps on length and number keep a hostile file from buying quadratic time.
+    candidates = [other for other in known if other != name and len(other) <= SHOWN_LENGTH][:_COMPARED_NAMES]
     same = [other for other in candidates if other.casefold() == name.casefold()]
     found = same or difflib.get_close_matches(name, candidates, n=1, cutoff=0.6)
     return f"; the nearest known name is {quoted(found[0])}" if found else ""

@@ -226,11 +226,11 @@ MISTAKES = [
     ("J = 1.8e-3", "J = 1.8e-3\nnote = 3", "not-a-text", "blocks.rotor.note", "must be a text"),
     ("J = 1.8e-3", "J = 1.8e-3\n[blocks]\nfan = 3", "not-a-table", "blocks.fan", "must be a table"),
     ("J = 1.8e-3", 'kt = 1.8e-3\nJ = 1', "name-twice", "blocks.rotor.kt", "repeats a shared parameter"),
-    # coefficients, each in their own table
+    # coefficients
     ("numerator = [1.0]\n", "", "key-missing", "blocks.coil.numerator", "is missing"),
     ("numerator = [1.0]", "numerator = []", "empty-array", "blocks.coil.numerator", "is empty"),
     ("numerator = [1.0]", "numerator = 1.0", "not-an-array", "blocks.coil.numerator", "must be an array"),
-    ("numerator = [1.0]", 'numerator = [1, "2"]', "not-a-number", "blocks.coil.numerator", "entry 2: must be a number"),
+    ("numerator = [1.0]", 'numerator = [1, "2"]', "not-a-number", "blocks.coil.numerator", "entry 2 must be a number"),
     ("[3.4e-3, 0.82]", "[0, 0.0]", "zero-denominator", "blocks.coil.denominator", "must not be"),
     ("[3.4e-3, 0.82]", "[]", "empty-array", "blocks.coil.denominator", "is empty"),
     ("[3.4e-3, 0.82]", str([1] * 102), "order-too-high", "blocks.coil.denominator", "has order 101"),
@@ -248,7 +248,7 @@ MISTAKES = [
     ("gain_margin_db = 6", "gain_margin_db = -6", "not-positive", "limits.gain_margin_db", "must be above 0"),
     ("gain_margin_db = 6", "gain_margin = 6", "unknown-key", "limits.gain_margin", "`gain_margin_db`"),
     ("modulus_margin = 0.5", "modulus_margin = 0", "not-positive", "loops.2.limits.modulus_margin", "above 0"),
-    ("modulus_margin = 0.5", "modulus = 0.5", "unknown-key", "loops.2.limits.modulus", "[[loops]] number 2 (`speed`)"),
+    ("modulus_margin = 0.5", "modulus = 0.5", "unknown-key", "loops.2.limits.modulus", "`modulus_margin`"),
     ("gain = 1.0", "gain = 0", "not-positive", "loops.2.gain", "must be above 0"),
     ("gain = 1.0", "gain = -1.0", "not-positive", "loops.2.gain", "must be above 0"),
     ("gain = 1.0", "gian = 1.0", "unknown-key", "loops.2.gian", "nearest known name is `gain`"),
@@ -283,11 +283,11 @@ SPACE = "state_space = { A = [[-1, 2], [0, -3]], B = [0, 1], C = [1, 0], D = 0 }
 MEASURED = 'measured = "rotor.csv"\nunstable_poles = 0\nintegrators = 1\n'
 
 OTHER_BLOCKS = [
-    (ROOTS, "poles = [-1]", "poles = [[-1, 0]]", "bad-root", "poles", "`[re, 0]` is no pair"),
+    (ROOTS, "poles = [-1]", "poles = [[-1, 0]]", "bad-root", "poles", "is `[re, 0]`, no pair"),
     (ROOTS, "poles = [-1]", "poles = [[-1, 2], [-1, -2]]", "bad-root", "poles", "the conjugate of `[-1, 2]` too"),
     (ROOTS, "poles = [-1]", "poles = [[-1, 2, 3]]", "bad-root", "poles", "root 1"),
     (ROOTS, "poles = [-1]", 'poles = [-1, "x"]', "not-a-number", "poles", "root 2"),
-    (ROOTS, "poles = [-1]", "poles = [-1, [2, inf]]", "number-range", "poles", "root 2, entry 2: is infinite"),
+    (ROOTS, "poles = [-1]", "poles = [-1, [2, inf]]", "number-range", "poles", "root 2, entry 2 is infinite"),
     (ROOTS, "poles = [-1]", f"poles = {[[-1, 2]] * 51}", "order-too-high", "poles", "has order 102"),
     (ROOTS, "zeros = []\n", "", "key-missing", "zeros", "is missing"),
     (ROOTS, "leading_gain = 1\n", "", "key-missing", "leading_gain", "is missing"),
@@ -348,6 +348,12 @@ def test_several_mistakes_are_reported_together(tmp_path: Path) -> None:
         "limits.gain_margin_db",
         "loops.2.cut",
     ]
+
+
+def test_a_name_given_twice_is_one_mistake(tmp_path: Path) -> None:
+    """What the name means in equations is not guessed."""
+    text = changed(("ke = 0.41\n", "ke = 0.41\nspeed = 1\n"), ("current_command - current", "current_comand"))
+    assert [problem.code for problem in problems_of(text, tmp_path)] == ["name-twice", "unknown-name"]
 
 
 @pytest.mark.parametrize(
