@@ -115,6 +115,7 @@ def test_poles_left_on_the_axis_hidden_poles_files_and_warnings_are_told() -> No
     assert "Measured: block bending from flexible.csv, 812 lines, 2.000 Hz to 3000 Hz." in text
     assert "Warning: rewinder.toml, [blocks.vessel]: the pole at 0.0015 rad/s" in text
     assert "unstable poles with all loops open 1, with all loops closed 3" in text
+    assert "with all loops closed undecided." in report(UNDECIDED, unstable_poles_all_closed=None)
 
 
 def test_assumptions_are_told() -> None:

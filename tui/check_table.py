@@ -6,7 +6,7 @@ from encircle.engine.result import LoopResult, Result
 from encircle.tui.loop_report import loop_lines, overview_lines
 from encircle.tui.margin_table import MISSED_MARK
 from encircle.tui.plain_text import Layout, Style
-from encircle.tui.wording import CAUTION, OUTCOME_WORDS, complex_pair, count_or_unknown, frequency, plural
+from encircle.tui.wording import CAUTION, OUTCOME_WORDS, complex_pair, frequency, plural
 
 _OUTCOME_STYLE: dict[str, Style] = {"pass": "good", "fail": "bad", "undecided": "doubt"}
 
@@ -58,8 +58,10 @@ def _loop_reasons(loop: LoopResult) -> list[str]:
 
 
 def _whole_diagram(result: Result, layout: Layout) -> list[str]:
-    before = count_or_unknown(result.unstable_poles_all_open)
-    after = count_or_unknown(result.unstable_poles_all_closed)
+    before, after = (
+        "undecided" if count is None else str(count)
+        for count in (result.unstable_poles_all_open, result.unstable_poles_all_closed)
+    )
     counts = f"Whole diagram: unstable poles with all loops open {before}, with all loops closed {after}."
     groups = "; ".join(", ".join(group) for group in result.uncut_feedback)
     lines = layout.wrapped(counts, hanging=3)

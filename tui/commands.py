@@ -138,4 +138,5 @@ def _fault(error: Exception) -> str:
     while trace is not None and trace.tb_next is not None:
         trace = trace.tb_next
     place = f" at {os.path.basename(trace.tb_frame.f_code.co_filename)}:{trace.tb_lineno}" if trace else ""
-    return f"internal fault, no verdict was reached ({type(error).__name__}{place}: {error})"
+    words = f": {error}" if str(error) else ""
+    return f"internal fault, no verdict was reached ({type(error).__name__}{place}{words})"
