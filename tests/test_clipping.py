@@ -71,7 +71,7 @@ def test_a_far_end_keeps_its_direction() -> None:
 
 
 def test_a_point_alone_is_seen() -> None:
-    assert len(line_dots(*line([(0, 0)]), WINDOW, CANVAS)) == 1
+    assert len(line_dots([line([(0, 0)])], WINDOW, CANVAS)[0]) == 1
 
 
 @pytest.mark.parametrize("edges", [(1, 1, 0, 1), (2, 1, 0, 1), (0, 1, 0, np.nan), (-np.inf, 1, 0, 1)])
@@ -84,7 +84,7 @@ def test_no_window_without_an_inside(edges: tuple[float, float, float, float]) -
 @settings(max_examples=300, deadline=None)
 def test_dots_are_distinct_and_on_the_canvas(points: list[tuple[float, float]], columns: int, rows: int) -> None:
     canvas = Canvas(columns, rows)
-    dots = line_dots(*line(points), WINDOW, canvas)
+    dots = line_dots([line(points)], WINDOW, canvas)[0]
     assert len(np.unique(dots, axis=0)) == len(dots)
     assert (dots >= 0).all()
     assert (dots < (canvas.dots_across, canvas.dots_upward)).all()
@@ -94,7 +94,7 @@ def test_dots_are_distinct_and_on_the_canvas(points: list[tuple[float, float]], 
 @settings(max_examples=200, deadline=None)
 def test_a_line_inside_is_unbroken_and_within_a_dot_of_its_course(points: list[tuple[float, float]]) -> None:
     x, y = line(points)
-    dots = line_dots(x, y, WINDOW, CANVAS)
+    (dots,) = line_dots([(x, y)], WINDOW, CANVAS)
     across, upward = WINDOW.fractions(x, y)
     course = np.stack([across * (CANVAS.dots_across - 1), upward * (CANVAS.dots_upward - 1)], axis=1)
     assert max(distance_to_course(dot, course) for dot in dots) <= 0.75
@@ -120,14 +120,22 @@ def test_thinning_keeps_extremes_and_crossings() -> None:
     y = np.zeros_like(x)
     y[70_000] = 2.9
     y[20_000] = 50.0
-    dots = line_dots(x, y, WINDOW, CANVAS)
+    (dots,) = line_dots([(x, y)], WINDOW, CANVAS)
     across, upward = WINDOW.fractions(x[[70_000, 20_000]], [2.9, 3.0])
     wanted = np.rint(np.stack([across * (CANVAS.dots_across - 1), upward * (CANVAS.dots_upward - 1)], axis=1))
     assert {tuple(dot) for dot in wanted} <= {tuple(dot) for dot in dots.astype(float)}
     assert len(dots) < 4 * CANVAS.dots_across
 
 
+def test_lines_worked_on_together_stay_apart() -> None:
+    lines = [line([(-2, 0), (2, 0)]), line([]), line([(2, 0), (2, 3), (1, 3)]), line([(5, 5), (6, 6)]), line([(0, 0)])]
+    together = line_dots(lines, WINDOW, CANVAS)
+    apart = [line_dots([each], WINDOW, CANVAS)[0] for each in lines]
+    assert [len(dots) for dots in together][1::2] == [0, 0]
+    assert all(np.array_equal(a, b) for a, b in zip(together, apart, strict=True))
+
+
 def test_a_line_that_fills_an_area_is_thinned() -> None:
     x = np.linspace(-2, 2, 20_001)
-    dots = line_dots(x, 1 + 2 * (-1.0) ** np.arange(x.size), WINDOW, Canvas(120, 40))
+    (dots,) = line_dots([(x, 1 + 2 * (-1.0) ** np.arange(x.size))], WINDOW, Canvas(120, 40))
     assert len(dots) <= MOST_DOTS

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Container
 from itertools import groupby
 
 from encircle.tui.glyphs import plain_table
@@ -26,9 +25,9 @@ class CellGrid:
             self._characters[row][column] = character
             self._roles[row][column] = role
 
-    def put_free(self, row: int, column: int, character: str, role: Role, over: Container[Role] = ()) -> None:
-        """Set one cell if it is empty or of a role that may be written over."""
-        if self._characters[row][column] == " " or self._roles[row][column] in over:
+    def put_free(self, row: int, column: int, character: str, role: Role, over: tuple[Role, ...] = ()) -> None:
+        """Set one cell if nothing has been put there, or something of a role that may be written over."""
+        if self._roles[row][column] in (Role.BLANK, *over):
             self.put(row, column, character, role)
 
     def write(self, row: int, column: int, text: str, role: Role) -> None:

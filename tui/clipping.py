@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.intp]
 
 # Points further off than this many window widths are drawn in along the ray from the window's centre, so that no
 # difference overflows; the line then leaves the window less than a millionth of its width from where it should.
@@ -46,8 +47,12 @@ class Window:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Segments:
-    """The visible parts of a polyline in order of travel: from (x0, y0) to (x1, y1), each (m,), fractions in [0, 1]."""
+    """The visible parts of a polyline in order of travel: from (x0, y0) to (x1, y1), each (m,), fractions in [0, 1].
 
+    ``first`` (m,): the point of the polyline at which the segment began before it was clipped.
+    """
+
+    first: IntArray
     x0: FloatArray
     y0: FloatArray
     x1: FloatArray
@@ -57,15 +62,15 @@ class Segments:
 def clip(x: FloatArray, y: FloatArray, window: Window) -> Segments:
     """The visible parts of the polyline through (x, y), each (n,), as fractions of the window.
 
-    A number that is not finite breaks the line. A polyline of one point is a segment of no length.
+    A number that is not finite breaks the line. A point between two breaks is a segment of no length.
     """
     with np.errstate(over="ignore", invalid="ignore"):
         across, upward = _drawn_in(*window.fractions(x, y))
-    if across.size == 1:
-        across, upward = np.repeat(across, 2), np.repeat(upward, 2)
-    whole = np.isfinite(across) & np.isfinite(upward)
-    joined = whole[:-1] & whole[1:]
-    return _clip_to_unit_square(across[:-1][joined], upward[:-1][joined], across[1:][joined], upward[1:][joined])
+    whole = np.concatenate(([False], np.isfinite(across) & np.isfinite(upward), [False]))
+    before, here, after = whole[:-2], whole[1:-1], whole[2:]
+    first = np.flatnonzero(here & (after | ~before))
+    last = first + after[first]
+    return _clip_to_unit_square(first, across[first], upward[first], across[last], upward[last])
 
 
 def _drawn_in(across: FloatArray, upward: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -75,7 +80,7 @@ def _drawn_in(across: FloatArray, upward: FloatArray) -> tuple[FloatArray, Float
     return 0.5 + (across - 0.5) * scale, 0.5 + (upward - 0.5) * scale
 
 
-def _clip_to_unit_square(x0: FloatArray, y0: FloatArray, x1: FloatArray, y1: FloatArray) -> Segments:
+def _clip_to_unit_square(first: IntArray, x0: FloatArray, y0: FloatArray, x1: FloatArray, y1: FloatArray) -> Segments:
     """Liang-Barsky: each edge bounds the parameter t of the point (x0, y0) + t (x1 - x0, y1 - y0) from one side."""
     dx, dy = x1 - x0, y1 - y0
     towards = np.stack([-dx, dx, -dy, dy])
@@ -88,6 +93,7 @@ def _clip_to_unit_square(x0: FloatArray, y0: FloatArray, x1: FloatArray, y1: Flo
     seen = (entering <= leaving) & ~parallel_outside
     x0, y0, dx, dy, entering, leaving = (part[seen] for part in (x0, y0, dx, dy, entering, leaving))
     return Segments(
+        first[seen],
         np.clip(x0 + entering * dx, 0, 1),
         np.clip(y0 + entering * dy, 0, 1),
         np.clip(x0 + leaving * dx, 0, 1),

@@ -55,6 +55,7 @@ def direction_marks(line: ComplexArray, window: Window, canvas: Canvas, keep_cle
     # A long step is a stretch outside the window or between few samples: no place for a mark.
     steps = np.minimum(np.abs(np.diff(seen)) / cell, 2 * ROOM)
     strand = _Strand(seen / cell, np.concatenate(([0.0], np.cumsum(steps))))
+    keep_clear = keep_clear[np.isfinite(keep_clear)]
     count = int(min(MOST_MARKS, np.ceil(strand.way[-1] / BETWEEN_MARKS)))
     wanted = strand.way[-1] * (np.arange(count) + 0.5) / max(count, 1)
     places = (_free_place(strand, float(way), keep_clear / cell) for way in wanted)

@@ -6,14 +6,12 @@ that the work behind never exceeds the size of the canvas, and extremes and cros
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
-from encircle.tui.clipping import FloatArray, Segments, Window, clip
-
-IntArray = NDArray[np.intp]
+from encircle.tui.clipping import FloatArray, IntArray, Segments, Window, clip
 
 DOTS_ACROSS = 2
 DOTS_UPWARD = 4
@@ -44,21 +42,31 @@ class Canvas:
         return column, round(upward * (self.dots_upward - 1)) // DOTS_UPWARD
 
 
-def line_dots(x: FloatArray, y: FloatArray, window: Window, canvas: Canvas) -> IntArray:
-    """The distinct dots (m, 2) of the polyline through (x, y), as (from the left, from the bottom), in order of travel.
+def line_dots(lines: Sequence[tuple[FloatArray, FloatArray]], window: Window, canvas: Canvas) -> list[IntArray]:
+    """The distinct dots (m, 2) of each polyline through (x, y), in order of travel, from the left and from the bottom.
 
-    The outermost dots lie on the window's edges.
+    The outermost dots lie on the window's edges. All lines are worked on at once.
     """
-    dots = _without_corners(_without_repeats(_passed(clip(x, y, window), canvas)))
-    key = dots[:, 0] * canvas.dots_upward + dots[:, 1]
+    x, y, number = _joined(lines)
+    segments = clip(x, y, window)
+    steps = _thin(_passed(segments, number[segments.first], canvas))
+    key = (steps[:, 0] * canvas.dots_across + steps[:, 1]) * canvas.dots_upward + steps[:, 2]
     _, first = np.unique(key, return_index=True)
-    first.sort()
-    stride = 1 + first.size // MOST_DOTS
-    return np.asarray(dots[first[::stride]])
+    steps = steps[np.sort(first)]
+    ends = np.searchsorted(steps[:, 0], np.arange(1, len(lines)))
+    return [dots[:: 1 + len(dots) // MOST_DOTS] for dots in np.split(steps[:, 1:], ends)]
 
 
-def _passed(segments: Segments, canvas: Canvas) -> IntArray:
-    """Dots along every segment at steps of at most one dot, both ends included."""
+def _joined(lines: Sequence[tuple[FloatArray, FloatArray]]) -> tuple[FloatArray, FloatArray, IntArray]:
+    """One polyline with a break after each line, and the number of the line that each point belongs to."""
+    gap = np.array([np.nan])
+    x = np.concatenate([part for x, _ in lines for part in (x, gap)])
+    y = np.concatenate([part for _, y in lines for part in (y, gap)])
+    return x, y, np.repeat(np.arange(len(lines)), [len(x) + 1 for x, _ in lines])
+
+
+def _passed(segments: Segments, number: IntArray, canvas: Canvas) -> IntArray:
+    """Along every segment, at steps of at most one dot and at both ends: line number and dot, (m, 3)."""
     width, height = canvas.dots_across - 1, canvas.dots_upward - 1
     x0, y0 = segments.x0 * width, segments.y0 * height
     dx, dy = segments.x1 * width - x0, segments.y1 * height - y0
@@ -66,26 +74,20 @@ def _passed(segments: Segments, canvas: Canvas) -> IntArray:
     which = np.repeat(np.arange(steps.size), steps + 1)
     first = np.cumsum(steps + 1) - (steps + 1)
     t = (np.arange(which.size) - first[which]) / np.maximum(steps, 1)[which]
-    dots = np.stack([np.rint(x0[which] + t * dx[which]), np.rint(y0[which] + t * dy[which])], axis=1)
-    return dots.astype(np.intp)
+    across, upward = np.rint(x0[which] + t * dx[which]), np.rint(y0[which] + t * dy[which])
+    return np.stack([number[which], across.astype(np.intp), upward.astype(np.intp)], axis=1)
 
 
-def _without_repeats(dots: IntArray) -> IntArray:
-    """Dots that differ from the one before."""
-    if len(dots) == 0:
-        return dots
-    moved = (np.diff(dots, axis=0) != 0).any(axis=1)
-    return dots[np.concatenate(([True], moved))]
-
-
-def _without_corners(dots: IntArray) -> IntArray:
-    """The same line one dot thin: a dot is left out where its neighbours touch by their corners without it."""
-    if len(dots) < 3:
-        return dots
-    straight = np.abs(np.diff(dots, axis=0)).sum(axis=1) == 1
-    corner = np.zeros(len(dots), dtype=bool)
-    corner[1:-1] = straight[:-1] & straight[1:] & (np.abs(dots[2:] - dots[:-2]) == 1).all(axis=1)
+def _thin(steps: IntArray) -> IntArray:
+    """The same lines without repeated dots and without dots that only fill a corner between two others."""
+    if len(steps) == 0:
+        return steps
+    moved = (np.diff(steps, axis=0) != 0).any(axis=1)
+    steps = steps[np.concatenate(([True], moved))]
+    straight = np.abs(np.diff(steps, axis=0)).sum(axis=1) == 1
+    corner = np.zeros(len(steps), dtype=bool)
+    corner[1:-1] = straight[:-1] & straight[1:] & (steps[2:, 1:] != steps[:-2, 1:]).all(axis=1)
     # Of corners in a row every second one goes, or the line would tear.
-    place = np.arange(len(dots))
+    place = np.arange(len(steps))
     run_start = np.maximum.accumulate(np.where(corner, 0, place + 1))
-    return np.asarray(dots[~(corner & ((place - run_start) % 2 == 0))])
+    return np.asarray(steps[~(corner & ((place - run_start) % 2 == 0))])

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 
 import numpy as np
@@ -151,7 +150,7 @@ class _Picture:
 
     def _put_captions(self) -> None:
         """In the corner of the canvas that hides least, upper corners and the right side first."""
-        runs = [run for caption in self.drawing.captions for run in self._caption_runs(caption)]
+        runs = [(self._captioned(caption), caption.role) for caption in self.drawing.captions]
         length = sum(len(text) for text, _ in runs)
         if not runs or length > self.canvas.columns - 2:
             return
@@ -162,10 +161,9 @@ class _Picture:
             self.grid.write(row, column, text, role)
             column += len(text)
 
-    def _caption_runs(self, caption: Caption) -> Iterable[tuple[str, Role]]:
+    def _captioned(self, caption: Caption) -> str:
         sample = SAMPLES[caption.gap] + " " if caption.gap else ""
-        yield sample + self._spelled(caption.text), caption.role
-        yield "  ", Role.BLANK
+        return f"{sample}{self._spelled(caption.text)}  "
 
     def _put_lattice(self) -> None:
         """A point wherever two ticks meet and nothing else stands."""
@@ -234,11 +232,13 @@ class _Picture:
 
 def _layers(drawing: Drawing, canvas: Canvas) -> tuple[Layer, ...]:
     """The dots of all curves, shared out so that each cell belongs to the highest role in it."""
-    lines = [line_dots(curve.x, curve.y, drawing.window, canvas)[:: curve.gap] for curve in drawing.curves]
-    if not lines:
+    curves = drawing.curves
+    if not curves:
         return ()
+    lines = line_dots([(curve.x, curve.y) for curve in curves], drawing.window, canvas)
+    lines = [line[:: curve.gap] for curve, line in zip(curves, lines, strict=True)]
     dots = np.concatenate(lines)
-    rank = np.repeat([PRIORITY[curve.role] for curve in drawing.curves], [len(line) for line in lines])
+    rank = np.repeat([PRIORITY[curve.role] for curve in curves], [len(line) for line in lines])
     cell = dots[:, 0] // DOTS_ACROSS * canvas.rows + dots[:, 1] // DOTS_UPWARD
     owner = np.zeros(canvas.columns * canvas.rows, dtype=np.intp)
     np.maximum.at(owner, cell, rank)
