@@ -12,6 +12,7 @@ from encircle.engine.closing_order import PartKey, Stage
 from encircle.engine.counting import Counter, Gains, PartCount
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc
 from encircle.engine.declarations import MeasuredBlock
+from encircle.engine.data_study import study_data
 from encircle.engine.gain_map import FactorRange
 from encircle.engine.limits import judge
 from encircle.engine.loop_study import LoopStudy, study
@@ -56,9 +57,10 @@ def count_stage(counter: Counter, stage: Stage, gains: Gains, unit: float) -> St
 
 
 def _decided(counter: Counter, key: PartKey, count: PartCount) -> int | None:
-    """The count, unless a measured block contradicts its declared asymptote."""
+    """The count, unless a measured block contradicts its declared asymptote or the stated unstable poles the data."""
     off = any(model.first_line_is_off() for model in counter.system.measured_in(key))
-    return None if off else count.unstable
+    contradicted = count.unstable is not None and count.unstable < 0
+    return None if off or contradicted else count.unstable
 
 
 def _poles_of_copy(system: LoopSystem, node: int) -> int:
@@ -94,7 +96,8 @@ def loop_result(
     later = _contained_later(system, stage, counts)
     verdict = loop_verdict(counts.after, on_axis, declared.leaves_unstable, declared.leaves_on_axis, later)
     loop = OpenLoop(counter, stage, gains)
-    studied = study(counter, loop, gains, counts.after, windings, unit) if counts.after is not None else None
+    examine = study_data if loop.measured else study
+    studied = examine(counter, loop, gains, counts.after, windings, unit) if counts.after is not None else None
     margins = studied.margins if studied and verdict in ("stable", "as_declared") else None
     undecided = counts.undecided
     if verdict == "undecided" and counts.after is not None:

@@ -98,7 +98,7 @@ class MeasuredModel:
         return np.abs(self.H[-1]) * (last / np.maximum(w, last)) ** float(self.block.roll_off)
 
     def at_points(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
-        """Y on the chords; NaN above the last line, where only a bound is known."""
+        """Y on the chords; 0, the middle of the disc, above the last line."""
         place = self.place(omega)
         i = np.clip(place - 2, 0, len(self.lines) - 2)
         width = self.lines[i + 1] - self.lines[i]
@@ -109,7 +109,7 @@ class MeasuredModel:
         below = place == 0
         Y, change = np.where(below, self.constant, Y), np.where(below, 0.0, change)
         above = place == len(self.lines) + 1
-        return np.where(above, np.nan, Y), np.where(above, np.nan, change)
+        return np.where(above, 0.0, Y), np.where(above, 0.0, change)
 
     def far(self, radii: FloatArray) -> FarFactor:
         """|Y| <= |H_last| w_last^n |s|^(m - n), the declared asymptote taken over to the whole arc."""

@@ -70,6 +70,8 @@ class OpenLoop:
             A, B = self._weights @ values
             dA, dB = self._weights @ slopes
             L = B / A
+            if self.measured:
+                L[L == 0.0] = np.nan  # above the last line, where the data leave nothing but a disc round 0
             return L, (dB - L * dA) / A
 
     def _axis_poles(self, terms: Sequence[Term]) -> tuple[AxisPoleOfLoop, ...]:

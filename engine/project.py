@@ -12,6 +12,7 @@ import numpy as np
 
 from encircle.engine.algebra_warnings import algebra_warnings
 from encircle.engine.axis_poles import hidden_right
+from encircle.engine.band_cells import BandOfLoop
 from encircle.engine.closing_order import PartKey, Stage
 from encircle.engine.counting import Counter
 from encircle.engine.declarations import Declarations, MeasuredBlock
@@ -120,9 +121,9 @@ class Project:
             _, loop, studied = self._study(stage)
             sampled = studied.curve if studied else sample_loop(self._shared.counter, loop)
             lines = self._lines(stage)
-            self._shared.curves[address] = loop_curve(
-                loop, sampled, np.zeros(len(sampled.omega)), lines, self._unit
-            )
+            band = BandOfLoop(self._shared.counter, stage, self._gains)
+            radius = band.radius(sampled.omega) if loop.measured else np.zeros(len(sampled.omega))
+            self._shared.curves[address] = loop_curve(loop, sampled, radius, lines, self._unit)
         return self._shared.curves[address]
 
     def response(self, name: str, frequency: FloatArray) -> ComplexArray:
@@ -179,9 +180,10 @@ class Project:
     def _count(self, keys: Sequence[PartKey], lone: Sequence[int]) -> int | None:
         """Unstable poles of the whole diagram: of all parts and of the copies in no feedback."""
         counts = [count.unstable for count in self._shared.counter.count(keys, self._gains)]
-        if None in counts or any(m.first_line_is_off() for key in keys for m in self._shared.system.measured_in(key)):
-            return None
         system = self._shared.system
+        off = any(model.first_line_is_off() for key in keys for model in system.measured_in(key))
+        if off or any(count is None or count < 0 for count in counts):
+            return None
         blocks = [system.diagram.blocks[node] for node in lone]
         alone = sum(system.poles[block].right + system.declared.get(block, 0) for block in blocks)
         return alone + sum(count for count in counts if count is not None)

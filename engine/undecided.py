@@ -24,6 +24,8 @@ def explain(counter: Counter, key: PartKey, gains: Gains, count: PartCount, unit
     off = [model for model in system.measured_in(key) if model.first_line_is_off()]
     if off:
         return tuple(_first_line(model, unit) for model in off)
+    if count.unstable is not None and count.unstable < 0:
+        return (_contradiction(system, key, count.unstable),)
     if count.far is not None:
         return (_at_infinity(system, key, count.far, unit),)
     stretches: dict[UndecidedStretch, None] = {}
@@ -52,6 +54,17 @@ def _at_infinity(system: LoopSystem, key: PartKey, cause: FarCause, unit: float)
     else:
         why = "the behaviour above the highest feature is not bounded well enough: a steeper roll_off would decide"
     return UndecidedStretch(system.highest / unit, None, why)
+
+
+def _contradiction(system: LoopSystem, key: PartKey, count: int) -> UndecidedStretch:
+    """Fewer poles than none: the declarations cannot be true."""
+    stated = [(block, system.declared[block]) for block in dict.fromkeys(system.blocks_in(key)) if block in system.declared]
+    named = " and ".join(f"`unstable_poles = {poles}` of `{block}`" for block, poles in stated)
+    why = (
+        f"{named} cannot be true: the closed loop would have {count} unstable poles, so at least {-count} more must be "
+        "stated as unstable"
+    )
+    return UndecidedStretch(0.0, None, why)
 
 
 def _first_line(model: MeasuredModel, unit: float) -> UndecidedStretch:
