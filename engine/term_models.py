@@ -134,8 +134,7 @@ class TermModels:
 
     def on_cells(self, lower: FloatArray, upper: FloatArray) -> Models:
         """Enclosures of all terms, shape (terms, cells), on the cells [lower, upper] in rad/s."""
-        w = 0.5 * (lower + upper)
-        h = 0.5 * (upper - lower) * (1.0 + 4.0 * UNIT) + 4.0 * UNIT * w  # neighbouring cells overlap
+        w, h = centres_and_halves(lower, upper)
         with np.errstate(all="ignore"):
             factors = self._factors_on_cells(w, h)
             bands = self._bands(w, h, factors.v)
@@ -211,7 +210,7 @@ class TermModels:
             X *= np.exp(theta)
             E1 += theta
         tail = X - 1.0 - E1 - (E2 + 0.5 * E1 * E1)
-        slack = self._slack[:, None] + 2.0 * UNIT * self.delays[:, None] * w
+        slack = self._slack[:, None] + 3.0 * UNIT * self.delays[:, None] * w
         size_V = np.abs(V)
         r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINIEST
         if self._delta.any():
@@ -248,6 +247,12 @@ class TermModels:
     def _reduce(self, values: NumericArray, reciprocals: NumericArray) -> NumericArray:
         gathered = np.concatenate([values, reciprocals])[self._layout.chosen]
         return np.multiply.reduceat(gathered, self._layout.starts, axis=0)
+
+
+def centres_and_halves(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Centre and half width of each cell; the halves are widened so that rounded neighbours overlap."""
+    w = 0.5 * (lower + upper)
+    return w, 0.5 * (upper - lower) * (1.0 + 4.0 * UNIT) + 4.0 * UNIT * w
 
 
 def _layout(terms: Sequence[Powers], places: Mapping[Factor, list[int]], factors: int) -> _Layout:
