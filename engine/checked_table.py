@@ -11,6 +11,7 @@ from encircle.engine.mistakes import Mistakes, Place
 from encircle.engine.text import listed, nearest_known, quoted
 from encircle.engine.toml_source import RefusedDecimal
 
+_MOST_ENTRIES = 1000
 # No round number, so that no formula comes to divide by 0 because of it.
 _STAND_IN = Fraction(618034, 1000003)
 _BARE = frozenset("ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789_-")
@@ -137,11 +138,14 @@ class CheckedTable:
         return None
 
     def array(self, key: str) -> list[object] | None:
-        """An array of anything."""
+        """An array of anything, up to a thousand entries."""
         value = self.content.get(key)
-        if isinstance(value, list):
+        if not isinstance(value, list):
+            self.error("not-an-array", key, f"must be an array in brackets, not {described(value)}")
+        elif len(value) > _MOST_ENTRIES:
+            self.error("too-many", key, f"has {len(value)} entries, and at most {_MOST_ENTRIES} are read")
+        else:
             return value
-        self.error("not-an-array", key, f"must be an array in brackets, not {described(value)}")
         return None
 
     def numbers(self, key: str) -> tuple[Fraction, ...] | None:

@@ -140,6 +140,19 @@ def test_tables_with_very_many_names_are_refused(tmp_path: Path) -> None:
     assert "30002 entries" in one_problem(changed(("[parameters]\n", "[parameters]\n" + many)), tmp_path).message
 
 
+@pytest.mark.parametrize(
+    ("old", "new", "where"),
+    [
+        ("[3.4e-3, 0.82]", "[" + "1," * 1001 + "]", "blocks.coil.denominator"),
+        ('inputs = ["speed_command"', 'inputs = ["speed_command"' + ',"a"' * 1000, "inputs"),
+        ('[[loops]]\nname = "speed"', "[[loops]]\n" * 1000 + 'name = "speed"', "loops"),
+    ],
+)
+def test_very_long_arrays_are_refused(old: str, new: str, where: str, tmp_path: Path) -> None:
+    problems = problems_of(changed((old, new)), tmp_path)
+    assert any(problem.code == "too-many" and problem.where == where for problem in problems)
+
+
 @pytest.mark.skipif(not hasattr(os, "mkfifo"), reason="this system has no named pipes")
 def test_a_pipe_is_refused_without_waiting(tmp_path: Path) -> None:
     os.mkfifo(tmp_path / "rewinder.toml")
