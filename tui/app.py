@@ -58,6 +58,7 @@ class EncircleApp(App[int]):
     CSS = """
     Screen { layout: vertical; overflow: hidden hidden; }
     #entry { position: absolute; display: none; height: 1; border: none; padding: 0 1; background: transparent; }
+    #entry > .input--cursor { background: transparent; color: ansi_default; text-style: reverse; }
     """
     AUTO_FOCUS = None
     ENABLE_COMMAND_PALETTE = False
@@ -398,4 +399,5 @@ def run_screen(project: LoopProject) -> int:
     store = TrialStore(declarations.file, declarations.sha256)
     app = EncircleApp(project, store=store, ascii_only=terminal_session.ascii_only(sys.__stderr__))
     app.run(mouse=False)
+    terminal_session.forget_lost_terminal(sys.__stdout__, sys.__stderr__)
     return app.return_code or 0

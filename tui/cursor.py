@@ -92,7 +92,9 @@ def _gain(gain: float, filed: float) -> list[Piece]:
 
 
 def _decibels(db: float) -> str:
-    return f"{db:+.2f} dB".replace("-", MINUS) if math.isfinite(db) else f"{MINUS}∞ dB"
+    if math.isinf(db):
+        return "+∞ dB" if db > 0 else f"{MINUS}∞ dB"
+    return f"{db:+.2f} dB".replace("-", MINUS)
 
 
 def _in_decibels(magnitude: float) -> float:

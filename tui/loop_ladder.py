@@ -25,6 +25,7 @@ from encircle.tui.wording import (
 TITLE = "Loops, inside to outside"
 MOST_STRANDS = 5
 _MOST_NAME = 24
+_EVIDENCE_FROM = 50
 _TRIAL_WIDTH = len(" +00.00 dB ")
 _VERDICT_WIDTH = max(map(len, VERDICT_WORDS.values())) + 2
 VERDICT_INK = {"stable": Ink.GOOD, "as_declared": Ink.GOOD, "unstable": Ink.ALARM, "undecided": Ink.DOUBT}
@@ -90,24 +91,27 @@ def _loop_row(sheet: Sheet, picture: Picture, number: int, width: int) -> bool:
     chosen = number == picture.chosen
     name_ink = Ink.CHOSEN if chosen else Ink.STRONG
     names = _name_width(sheet, picture, width)
-    before, after = loop.unstable_poles_before, loop.unstable_poles_after
     verdict = VERDICT_WORDS[loop.verdict]
     left: list[Piece] = [
         (f"{'►' if chosen else ' '}{number + 1:>2}", name_ink),
         ("*" if number in picture.changed else " ", Ink.TRIAL),
-        (strands(before, after).ljust(width), Ink.BAD),
+        (strands(loop.unstable_poles_before, loop.unstable_poles_after).ljust(width), Ink.BAD),
         (padded(sheet.clean(loop.name), names), name_ink),
         "  ",
         (verdict, VERDICT_INK[loop.verdict]),
         " " * (_VERDICT_WIDTH - len(verdict)),
-        (
-            f"{count_or_unknown(before)} → {count_or_unknown(after)}",
-            Ink.BAD if loop.verdict == "unstable" else Ink.PLAIN,
-        ),
+        *_counts(loop, with_evidence=sheet.width >= _EVIDENCE_FROM),
     ]
     has_room = row_width(sheet.runs(left)) + _TRIAL_WIDTH <= sheet.width
     sheet.split_row(left, _trial_mark(picture, number) if has_room else [])
     return has_room
+
+
+def _counts(loop: LoopResult, *, with_evidence: bool) -> list[Piece]:
+    """P → Z and, where there is room, what they rest on."""
+    counts = f"{count_or_unknown(loop.unstable_poles_before)} → {count_or_unknown(loop.unstable_poles_after)}"
+    pieces: list[Piece] = [(counts, Ink.BAD if loop.verdict == "unstable" else Ink.PLAIN)]
+    return [*pieces, (f"  {loop.evidence}", Ink.QUIET)] if with_evidence and loop.evidence != "none" else pieces
 
 
 def _trial_mark(picture: Picture, number: int) -> list[Piece]:
@@ -132,7 +136,10 @@ def _second_row(sheet: Sheet, picture: Picture, number: int, width: int, trial: 
     loop = picture.now.loops[number]
     after = loop.unstable_poles_after
     left: list[Piece] = ["    ", (strands(after, after).ljust(width), Ink.BAD)]
-    sheet.split_row([*left, *least_room(loop, picture.now.frequency_unit)], trial)
+    left += least_room(loop, picture.now.frequency_unit)
+    label: list[Piece] = [("  least room", Ink.QUIET)] if loop.limits and loop.verdict == "stable" else []
+    fits = row_width(sheet.runs([*left, *label, *trial])) <= sheet.width
+    sheet.split_row([*left, *(label if fits else [])], trial)
 
 
 def least_room(loop: LoopResult, frequency_unit: str) -> list[Run]:
@@ -148,7 +155,7 @@ def least_room(loop: LoopResult, frequency_unit: str) -> list[Run]:
     missed = missed_limits(loop)
     if missed:
         return [("MISSED", Ink.ALARM), (f" {words}{_and_more(len(missed) - 1)}", Ink.BAD)]
-    return [(words, Ink.PLAIN), ("  least room", Ink.QUIET)]
+    return [(words, Ink.PLAIN)]
 
 
 def _and_more(others: int) -> str:

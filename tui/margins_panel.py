@@ -15,10 +15,11 @@ from encircle.tui.tightest_limit import missed_limits
 
 TITLE = "Room"
 _STATUS: dict[bool | None, Run] = {
-    True: ("met", Ink.GOOD),
+    True: ("met   ", Ink.GOOD),
     False: ("MISSED", Ink.ALARM),
     None: ("undecided", Ink.DOUBT),
 }
+_NO_STATUS: Run = ("      ", Ink.PLAIN)  # the columns stay where they are whatever is met or missed
 
 
 def margins_rows(
@@ -59,7 +60,7 @@ def _no_margins(loop: LoopResult) -> str:
 
 def _cells(row: MarginRow, before: MarginRow | None, trend: str, unit: str) -> list[Run]:
     """Status, quantity, value, trend, addition, limit, value in the file, place."""
-    status = _STATUS[row.finding.met] if row.finding is not None else ("", Ink.PLAIN)
+    status = _STATUS[row.finding.met] if row.finding is not None else _NO_STATUS
     changed = before is not None and before.quantity.value != row.quantity.value
     limit = short_required(row.finding, unit) if row.finding is not None else ""
     filed = f"file {short_value(before.quantity.value)}" if before is not None and changed else ""

@@ -59,4 +59,15 @@ def leave_on_signals(leave: Callable[[int], None]) -> Callable[[], None]:
     return stop_listening
 
 
+def forget_lost_terminal(*streams: TextIO | None) -> None:
+    """Send what is still buffered for a terminal that is gone to nowhere: Python would end with a status of its own."""
+    for stream in filter(None, streams):
+        try:
+            stream.flush()
+        except OSError:
+            nowhere = os.open(os.devnull, os.O_WRONLY)
+            os.dup2(nowhere, stream.fileno())
+            os.close(nowhere)
+
+
 prepare()
