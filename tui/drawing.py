@@ -7,8 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from encircle.tui.cell_grid import CellGrid, Row
-from encircle.tui.clipping import FloatArray, Window
-from encircle.tui.dots import DOTS_ACROSS, DOTS_UPWARD, Canvas, IntArray, line_dots
+from encircle.tui.clipping import FloatArray, IntArray, Window
+from encircle.tui.dots import DOTS_ACROSS, DOTS_UPWARD, Canvas, line_dots
 from encircle.tui.glyphs import Glyph, plain_text
 from encircle.tui.plotext_canvas import Layer, plot
 from encircle.tui.roles import BY_PRIORITY, PRIORITY, Role

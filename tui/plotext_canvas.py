@@ -12,7 +12,8 @@ from typing import Any
 
 import numpy as np
 
-from encircle.tui.dots import Canvas, IntArray
+from encircle.tui.clipping import IntArray
+from encircle.tui.dots import Canvas
 
 
 @dataclass(frozen=True, slots=True)
