@@ -34,8 +34,8 @@ SEARCH_GRID = np.logspace(-18.0, 18.0, 217)  # rad/s
 class Composed:
     """A formula in s as enclosures. Proved under the assumption on elementary functions stated in ``rounding``.
 
-    ``power_at_zero`` p: H = s^p times a part that is finite at s = 0, and not 0 there unless terms cancel in a way that the
-    algebra does not see.
+    ``power_at_zero`` p: H = s^p times a part that is finite at s = 0, and not 0 there unless terms cancel in a way that
+    the algebra does not see.
     """
 
     def __init__(self, block: FormulaBlock) -> None:

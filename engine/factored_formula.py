@@ -1,11 +1,11 @@
 """Formulas in s as sums and products in which powers of s at s = 0 stand outside, ready for enclosure.
 
-Every formula becomes a product  c s^p prod factor^n  with factors that are sums, principal powers of products, or functions
-that are analytic where their argument is: exp x, (exp x - 1)/x, and with z = x^2 also cosh sqrt z, sinh(sqrt z)/sqrt z and
-tanh(sqrt z)/sqrt z. sinh x is written x (sinh x/x), tanh x as x (tanh x/x): so the zero at x = 0 is a factor, quotients
-such as tanh(x)/x lose it by cancellation of equal factors, and no cut of a root inside cosh remains; sinh/cosh becomes tanh. All identities used hold
-for the principal branch at every s with Re s >= 0 where both sides are defined:
-c^a u^a = (c u)^a for c > 0, (u^a)^n = u^(a n) for integer n, u^a u^b = u^(a+b), (u^a)^b = u^(a b) for |a| < 1.
+Every formula becomes a product  c s^p prod factor^n  with factors that are sums, principal powers of products, or
+functions that are analytic where their argument is: exp x, (exp x - 1)/x, and with z = x^2 also cosh sqrt z, sinh(sqrt
+z)/sqrt z and tanh(sqrt z)/sqrt z. sinh x is written x (sinh x/x), tanh x as x (tanh x/x): so the zero at x = 0 is a
+factor, quotients such as tanh(x)/x lose it by cancellation of equal factors, and no cut of a root inside cosh remains;
+sinh/cosh becomes tanh. All identities used hold for the principal branch at every s with Re s >= 0 where both sides are
+defined: c^a u^a = (c u)^a for c > 0, (u^a)^n = u^(a n) for integer n, u^a u^b = u^(a+b), (u^a)^b = u^(a b) for |a| < 1.
 """
 
 from __future__ import annotations
@@ -93,8 +93,8 @@ ONE = number(RealInterval.exact(1))
 def factored_formula(expression: Expression, parameters: Mapping[str, Fraction]) -> Product:
     """The formula as a product; ``parameters`` gives every name in it but ``s`` and ``pi``.
 
-    Raises ZeroDivisionError, ValueError or OverflowError with a sentence for constants that divide by zero, are not real, or
-    leave double precision.
+    Raises ZeroDivisionError, ValueError or OverflowError with a sentence for constants that divide by zero, are not
+    real, or leave double precision.
     """
     return _Builder(parameters).product(expression)
 

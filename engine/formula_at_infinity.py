@@ -69,7 +69,10 @@ class FarField:
 
 
 def _even_function(name: Analytic, x: Growth, one: Exponential) -> Exponential:
-    """cosh x, sinh(x)/x or tanh(x)/x; the branch of the root x is free, they are even. tanh x = (1 - q)/(1 + q), q = exp(-2x)."""
+    """cosh x, sinh(x)/x or tanh(x)/x; they are even, so the branch of the root x is free.
+
+    tanh x = (1 - q)/(1 + q) with q = exp(-2 x).
+    """
     inverse = plain(x).power(Fraction(-1))
     if name == "tanhc_of_root":
         q = exponential(x.scaled(RealInterval.exact(-2)))

@@ -1,11 +1,11 @@
 """A factored formula on cells of a ray s = w exp(j angle), as a rule the imaginary axis.
 
-Every factor is evaluated in Taylor models divided by its own power of s at 0, so that the only singular quantity, a power of
-the frequency, is formed once and exactly: w^b on a cell that touches 0 lies between its chord and the chord plus the largest
-gap.
+Every factor is evaluated in Taylor models divided by its own power of s at 0, so that the only singular quantity, a
+power of the frequency, is formed once and exactly: w^b on a cell that touches 0 lies between its chord and the chord
+plus the largest gap.
 
-Principal branches: for a power of a product the arguments of its factors are enclosed and added; the result is proved where
-the sum stays within one turn and off the negative real axis. A cell on which it does not has an infinite radius.
+Principal branches: for a power of a product the arguments of its factors are enclosed and added; the result is proved
+where the sum stays within one turn and off the negative real axis. A cell on which it does not has an infinite radius.
 """
 
 from __future__ import annotations
@@ -20,8 +20,8 @@ import numpy as np
 from encircle.engine import hyperbolic
 from encircle.engine.factored_formula import Analytic, Factor, Function, PrincipalPower, Product, Sum
 from encircle.engine.real_interval import RealInterval
-from encircle.engine.result import FloatArray
-from encircle.engine.rounding import SLACK, TINY, UNIT, inflated_half, outward
+from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.rounding import SLACK, TINY, UNIT, inflated_half
 from encircle.engine.taylor_model import (
     TaylorModel,
     add,
@@ -57,7 +57,7 @@ class Ray:
         self.half = inflated_half(self.centre, np.asarray(half, dtype=float))
         self._angle = angle
         self._on_axis = angle == QUARTER_TURN
-        self._frequency = affine(self.centre + 0j, self.half + 0j)
+        self._frequency = affine(self.centre.astype(complex), self.half.astype(complex))
         self._touches_zero = self.centre - self.half <= 0.0
         self._powers: dict[Fraction, TaylorModel] = {}
         self._factors: dict[Factor, TaylorModel] = {}
@@ -116,32 +116,33 @@ class Ray:
     def _principal_power(self, factor: PrincipalPower) -> TaylorModel:
         """With base = +-s^P prod x^m: arg base = arg(+-1) + P angle + sum m arg x, reduced by whole turns.
 
-        Each factor's power continues its principal value at the middle; the turns taken off the sum come back as a phase.
+        Each factor's power continues its principal value at the middle; the turns taken off the sum come back as a
+        phase.
         """
         base, alpha = factor.base, float(factor.exponent)
-        lower = upper = float(base.order) * self._angle + (math.pi if base.coefficient.sign < 0 else 0.0)
-        result = None
+        half_turn = math.pi if base.coefficient.sign < 0 else 0.0
+        lower = upper = np.full(len(self.centre), float(base.order) * self._angle + half_turn)
+        result = constant(1.0, 0.0, 0, len(self.centre))
         for inner, m in base.factors:
             model = self.regular_factor(inner)
             low, high = argument_range(model)
             low, high = (low, high) if m > 0 else (high, low)
             lower, upper = lower + float(m) * low, upper + float(m) * high
             power = real_power(model, float(m * factor.exponent))
-            result = power if result is None else multiply(result, power)
-        if result is None:
-            result = constant(1.0, 0.0, 0, len(self.centre))
+            result = multiply(result, power) if len(base.factors) > 1 else power
         middle, slack = 0.5 * (lower + upper), SLACK * (1.0 + np.abs(lower) + np.abs(upper))
         turns = np.where(np.isfinite(middle), np.ceil(middle / (2.0 * math.pi) - 0.5), 0.0)
         proved = (lower - 2.0 * math.pi * turns - slack > -math.pi) & (upper - 2.0 * math.pi * turns + slack < math.pi)
-        phase = alpha * ((math.pi if base.coefficient.sign < 0 else 0.0) - 2.0 * math.pi * turns)
-        result = rotate(result, np.exp(1j * phase)) if np.any(phase) else result
-        return unprove(result, ~np.broadcast_to(proved, result.r.shape))
+        phase = alpha * (half_turn - 2.0 * math.pi * turns)
+        if phase.any():
+            result = rotate(result, np.exp(1j * phase), SLACK * (2.0 + np.abs(phase)))
+        return unprove(result, ~proved)
 
     def power(self, beta: Fraction) -> TaylorModel:
         """s^beta = w^beta exp(j beta angle)."""
         model = self._powers.get(beta)
         if model is None:
-            model = rotate(self._frequency_power(float(beta)), self._turn(beta))
+            model = rotate(self._frequency_power(beta), self._turn(beta))
             self._powers[beta] = model
         return model
 
@@ -149,18 +150,17 @@ class Ray:
         """exp(j beta angle); exact for integers on the imaginary axis."""
         if not self._on_axis:
             return cmath.exp(1j * float(beta) * self._angle)
-        reduced = beta % 4
-        if reduced.denominator == 1:
-            return (1.0 + 0j, 1j, -1.0 + 0j, -1j)[int(reduced)]
-        return cmath.exp(1j * float(reduced) * QUARTER_TURN)
+        quarters = round(beta)
+        rest = float(beta - quarters)  # at most 1/2 in size, so that rounding stays below 8 u
+        return (1.0 + 0j, 1j, -1.0 + 0j, -1j)[quarters % 4] * cmath.exp(1j * rest * QUARTER_TURN)
 
-    def _frequency_power(self, beta: float) -> TaylorModel:
-        if beta == 1.0:
+    def _frequency_power(self, beta: Fraction) -> TaylorModel:
+        if beta == 1:
             return self._frequency
-        model = real_power(self._frequency, beta)
+        model = real_power(self._frequency, float(beta))
         if not self._touches_zero.any():
             return model
-        return choose(self._touches_zero, self._power_at_zero(beta), model)
+        return choose(self._touches_zero, self._power_at_zero(float(beta)), model)
 
     def _power_at_zero(self, beta: float) -> TaylorModel:
         """w^beta for 0 <= w <= W = centre + half: x = w/W lies in [0, 1], and x^beta between x and x + gap.
@@ -168,14 +168,13 @@ class Ray:
         The gap x^beta - x has its one extremum at x = beta^(1/(1 - beta)) (beta^(1/(1-beta)) (1/beta - 1) there).
         """
         largest = (self.centre + self.half) * (1.0 + 2.0 * UNIT)
+        zero: ComplexArray = np.zeros(len(largest), complex)
         if beta < 0.0:
-            zero = np.zeros(len(largest), complex)
-            return TaylorModel(zero + np.inf, zero, zero, np.full(len(largest), np.inf))
-        gap = beta ** (1.0 / (1.0 - beta)) * (1.0 / beta - 1.0)
+            return TaylorModel(np.full(len(largest), complex(np.inf)), zero, zero, np.full(len(largest), np.inf))
+        gap = beta ** (1.0 / (1.0 - beta)) * (1.0 / beta - 1.0) if beta != 1.0 else 0.0
         positive = np.where(largest > 0.0, largest, 1.0)
-        whole = real_power(affine(positive + 0j, 0j * positive), beta)
-        middle = self.centre / positive + 0.5 * gap
-        radius = outward(0.5 * abs(gap) + 2.0 * SLACK + 0.0 * middle)
-        shape = TaylorModel(middle + 0j, self.half / positive + 0j, 0j * middle, radius)
-        zero = TaylorModel(0j * middle, 0j * middle, 0j * middle, TINY + 0.0 * middle)
-        return choose(largest > 0.0, multiply(shape, whole), zero)
+        radius = np.full(len(largest), abs(0.5 * gap) + 2.0 * SLACK)
+        middle = (self.centre / positive + 0.5 * gap).astype(complex)
+        shape = TaylorModel(middle, (self.half / positive).astype(complex), zero, radius)
+        whole = real_power(affine(positive.astype(complex), zero), beta)
+        return choose(largest > 0.0, multiply(shape, whole), TaylorModel(zero, zero, zero, zero.real + TINY))

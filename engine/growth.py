@@ -4,11 +4,11 @@ A ``Growth`` encloses, for each radius R of an array, a function on the outer ha
 
     sum_i c_i s^(p_i) + rest,   |rest| <= bound |s/R|^order,
 
-with rational descending powers p_i and real coefficients c_i (intervals, exact where the formula is rational). The terms are the
-same for every radius; only the bounds differ. An infinite bound means that nothing is known. Several terms are kept, not just
-the leading one, because exp(-T sqrt(s(s + a))) is seen to stay below exp(-T a/2 + small) only through the second term of
-the root. ``Exponential`` adds a factor exp(E), E a sum of positive powers, so that cosh(x sqrt s)/cosh(sqrt s) is compared
-exponent with exponent before anything is bounded.
+with rational descending powers p_i and real coefficients c_i (intervals, exact where the formula is rational). The
+terms are the same for every radius; only the bounds differ. An infinite bound means that nothing is known. Several
+terms are kept, not just the leading one, because exp(-T sqrt(s(s + a))) is seen to stay below exp(-T a/2 + small) only
+through the second term of the root. ``Exponential`` adds a factor exp(E), E a sum of positive powers, so that cosh(x
+sqrt s)/cosh(sqrt s) is compared exponent with exponent before anything is bounded.
 """
 
 from __future__ import annotations
@@ -117,8 +117,8 @@ class Growth:
     def power(self, alpha: Fraction) -> Growth:
         """The power of the leading term times (1 + x)^alpha expanded in x; any branch is left to the caller.
 
-        The remainder after K terms is a binomial series whose coefficients grow at most by q = max(1, (|alpha| + K)/(K + 1)):
-        below |C(|alpha| + K - 1, K)| xi^K / (1 - q xi) for |x| <= xi.
+        The remainder after K terms is a binomial series whose coefficients grow at most by q = max(1, (|alpha| + K)/(K
+        + 1)): below |C(|alpha| + K - 1, K)| xi^K / (1 - q xi) for |x| <= xi.
         """
         if alpha >= 0 and alpha.denominator == 1:
             return self._integer_power(int(alpha))
@@ -208,25 +208,28 @@ def exponential(x: Growth) -> Exponential:
 def off_negative_axis(power: Fraction, factors: Iterable[tuple[Growth, Fraction]]) -> BoolArray:
     """Whether s^power prod x^n is proved to stay off the closed negative real axis on |s| >= R, Re s >= 0, for each R.
 
-    The arguments of the factors are bounded one by one and added up; their sum must stay below pi.
+    The arguments of the factors are enclosed one by one and added; the sum must stay within -pi ... pi.
     """
-    quarter_turns, loose, strict = abs(power), np.zeros(1), False
+    lowest, highest, loose, strict = power, power, np.zeros(1), False
     for x, n in factors:
         argument = _argument(x)
-        quarter_turns += abs(n) * argument.quarter_turns
+        ends = (n * argument.lowest, n * argument.highest)
+        lowest, highest = lowest + min(ends), highest + max(ends)
         loose = loose + float(abs(n)) * argument.loose
         strict = strict or argument.strict
-    if not loose.any() and quarter_turns == 2:
+    largest = max(abs(lowest), abs(highest))
+    if not loose.any() and largest == 2:
         return np.full(len(loose), strict)
     with np.errstate(invalid="ignore"):
-        below: BoolArray = float(quarter_turns) * math.pi / 2.0 + loose * UP < math.pi / UP
+        below: BoolArray = float(largest) * math.pi / 2.0 + loose * UP < math.pi / UP
     return below
 
 
 class _Argument(NamedTuple):
-    """|arg x| <= quarter_turns pi/2 + loose; strict: never equal."""
+    """lowest arg s - loose <= arg x <= highest arg s + loose for arg s >= 0; strict: never at both ends."""
 
-    quarter_turns: Fraction
+    lowest: Fraction
+    highest: Fraction
     loose: FloatArray
     strict: bool
 
@@ -240,12 +243,12 @@ def _argument(x: Growth) -> _Argument:
     if powers and not x.bound.any() and all(c.sign > 0 for _, c in x.terms):
         width = powers[0] - powers[-1]
         if width < 2 or (width == 2 and len(powers) > 2):
-            return _Argument(max(abs(powers[0]), abs(powers[-1])), np.zeros(len(x.radius)), len(powers) > 1)
+            return _Argument(powers[-1], powers[0], np.zeros(len(x.radius)), len(powers) > 1)
     lead = x.leading
     if lead is None or lead.coefficient < 0:
-        return _Argument(Fraction(0), np.full(len(x.radius), np.nan), False)
+        return _Argument(Fraction(0), Fraction(0), np.full(len(x.radius), np.nan), False)
     loose = np.arcsin(np.where(lead.spread < 1.0, lead.spread, np.nan))
-    return _Argument(abs(lead.power), loose, False)
+    return _Argument(lead.power, lead.power, loose, False)
 
 
 def _binomial_series(x: Growth, alpha: Fraction) -> Growth:
@@ -295,8 +298,9 @@ def _binomial(alpha: Fraction, k: int) -> Fraction:
 def _exponential_bound(radius: FloatArray, exponent: Terms) -> Growth:
     """A bound of |exp(sum c_i s^(p_i))|, p_i > 0 descending; unknown where it may grow.
 
-    For 0 < p <= 1 and Re s >= 0, cos(p pi/2) |s|^p <= Re s^p <= |s|^p. A negative leading coefficient with p < 1 gives decay
-    exp(-D |s|^p), the other terms counted at their largest; with p = 1 it only gives |exp| <= 1, and the next term decides.
+    For 0 < p <= 1 and Re s >= 0, cos(p pi/2) |s|^p <= Re s^p <= |s|^p. A negative leading coefficient with p < 1 gives
+    decay exp(-D |s|^p), the other terms counted at their largest; with p = 1 it only gives |exp| <= 1, and the next
+    term decides.
     """
     if exponent and exponent[0][0] == 1 and exponent[0][1].upper <= 0:
         exponent = exponent[1:]
@@ -355,10 +359,11 @@ def _size(term: Term, radius: FloatArray) -> FloatArray:
     """An upper bound of |c| R^p."""
     scaled = term[1].scaled()
     with np.errstate(over="ignore", under="ignore"):
-        size = np.ldexp((abs(scaled.value) + scaled.radius) * UP, scaled.exponent)
-        return size * _power(radius, term[0])
+        coefficient = float(np.ldexp((abs(scaled.value) + scaled.radius) * UP, scaled.exponent))
+        return coefficient * _power(radius, term[0])
 
 
 def _power(radius: FloatArray, power: Fraction) -> FloatArray:
     with np.errstate(over="ignore", under="ignore", divide="ignore"):
-        return radius ** float(power) * (UP + 1e-12 * float(abs(power))) + 1e-300
+        value: FloatArray = radius ** float(power) * (UP + 1e-12 * float(abs(power))) + 1e-300
+    return value

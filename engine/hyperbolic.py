@@ -1,8 +1,8 @@
 """Hyperbolic functions as functions of the square of their argument, and (exp x - 1)/x, on cells.
 
-cosh(sqrt z), sinh(sqrt z)/sqrt z and tanh(sqrt z)/sqrt z are analytic at z = 0 and do not depend on the branch of the root,
-so no cut and no singular point at s = 0 remains in tanh(sqrt s)/sqrt s and its kin. Where |z| <= 1 on the whole cell the
-Maclaurin series serves, elsewhere the exponentials of any root of z, scaled by powers of two.
+cosh(sqrt z), sinh(sqrt z)/sqrt z and tanh(sqrt z)/sqrt z are analytic at z = 0 and do not depend on the branch of the
+root, so no cut and no singular point at s = 0 remains in tanh(sqrt s)/sqrt s and its kin. Where |z| <= 1 on the whole
+cell the Maclaurin series serves, elsewhere the exponentials of any root of z, scaled by powers of two.
 """
 
 from __future__ import annotations
@@ -129,8 +129,8 @@ _QUOTIENT = _Series(lambda k: 1.0 / factorial(k + 1))
 def _series(z: TaylorModel, series: _Series) -> TaylorModel:
     """f(v + y), y = d t + e t^2 + zeta: second order at v; |f'''|/6 <= ``third`` on the disc that holds the cell.
 
-    The powers v^0 ... v^23 are formed one from the other: 3 k u for v^k, and 28 u for the sum of 24 products; weighted with
-    c_k, whose mean index is below 1, less than 64 u of the sum of the c_k.
+    The powers v^0 ... v^23 are formed one from the other: 3 k u for v^k, and 28 u for the sum of 24 products; weighted
+    with c_k, whose mean index is below 1, less than 64 u of the sum of the c_k.
     """
     if z.exponent is not None:
         factor = np.ldexp(1.0, z.exponent)

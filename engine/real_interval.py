@@ -30,8 +30,8 @@ class ScaledConstant(NamedTuple):
 class RealInterval:
     """[lower, upper]; exact where both are equal. Operations enclose the exact result.
 
-    Raises ZeroDivisionError for a division by an interval that holds 0, ValueError for a power or root that is not real,
-    OverflowError where a function's argument or value lies outside double precision.
+    Raises ZeroDivisionError for a division by an interval that holds 0, ValueError for a power or root that is not
+    real, OverflowError where a function's argument or value lies outside double precision.
     """
 
     lower: Fraction
@@ -93,7 +93,7 @@ class RealInterval:
         if self.is_zero and exponent > 0:
             return self
         if self.sign <= 0:
-            raise ValueError("a constant of the formula is a root or a fractional power of a number that is not positive")
+            raise ValueError("a constant of the formula takes a root of a number that is not positive")
         rational = _exact_power(self.lower, exponent) if self.is_exact else None
         if rational is not None:
             return RealInterval.exact(rational)

@@ -1,10 +1,12 @@
-"""Double-precision rounding: the unit roundoff, what is charged for it, outward helpers, and the assumption it rests on.
+"""Double-precision rounding: the unit roundoff, what is charged for it, outward helpers, and the assumption it rests
+on.
 
-Every proof of this program is conditional on one statement about the machine: additions, products, quotients and square roots
-of doubles are rounded to nearest (IEEE 754), and the elementary functions named in ``_REFERENCE`` err by at most 4 units in the
-last place (8 u of the result, complex results normwise). ``check_elementary_functions`` holds the statement against a fixed
-table once per process. Normwise bounds of complex products and quotients: R. P. Brent, C. Percival, P. Zimmermann, "Error
-bounds on complex floating-point multiplication", Math. Comp. 76 (2007) 1469-1481: sqrt(5) u; quotients below 8 u.
+Every proof of this program is conditional on one statement about the machine: additions, products, quotients and square
+roots of doubles are rounded to nearest (IEEE 754), and the elementary functions named in ``_REFERENCE`` err by at most
+4 units in the last place (8 u of the result, complex results normwise). ``check_elementary_functions`` holds the
+statement against a fixed table once per process. Normwise bounds of complex products and quotients: R. P. Brent, C.
+Percival, P. Zimmermann, "Error bounds on complex floating-point multiplication", Math. Comp. 76 (2007) 1469-1481:
+sqrt(5) u; quotients below 8 u.
 """
 
 from __future__ import annotations
@@ -21,8 +23,8 @@ UNIT = 2.0**-53
 SLACK = 8.0 * UNIT  # one complex product or quotient, or one elementary function (4 units in the last place)
 TINY = 1e-280  # added to every radius: more than all that underflow can lose
 LIBM_ASSUMPTION = (
-    "sums, products, quotients and square roots of doubles are rounded to nearest, and the elementary functions of this "
-    "machine err by at most 4 units in the last place (checked on a table)"
+    "sums, products, quotients and square roots of doubles are rounded to nearest, and the elementary functions of "
+    "this machine err by at most 4 units in the last place (checked on a table)"
 )
 
 
@@ -58,7 +60,9 @@ def agrees(function: Callable[..., Any], arguments: tuple[Any, ...], references:
         return bool(np.all(np.abs(function(*columns) - expected) <= 4.0 * np.spacing(np.abs(expected))))
 
 
-_ANY = [0.001, 0.1, 0.7853981633974483, 1.0, 2.5, 10.0, 100.25, -3.75, 12345.678, 1e6, 3.3e9, -0.5, 5.5, -20.125, 1.25e-08]
+_ANY = [
+    0.001, 0.1, 0.7853981633974483, 1.0, 2.5, 10.0, 100.25, -3.75, 12345.678, 1e6, 3.3e9, -0.5, 5.5, -20.125, 1.25e-08,
+]  # fmt: skip
 _MODERATE = [x for x in _ANY if abs(x) < 700.0]
 _POSITIVE = [1e-300, 1e-10, 0.3, 0.5, 1.5, 2.0, 3.0, 7.25, 1000.1, 1e10, 6.02e23, 1e300]
 _COMPLEX = [-3 + 4j, 0.1 + 0.2j, 1e-5 + 2j, 2 - 1000j, -20 + 1.5j, 0.3 - 0.1j, -0.5 + 12345.678j, 5 + 3j]
@@ -86,8 +90,8 @@ _REFERENCE: dict[str, tuple[Callable[..., Any], tuple[Any, ...], list[Any]]] = {
         -0.9999999981810384, 1.2500000078125e-08,
     ]),
     "sqrt": (np.sqrt, (_POSITIVE,), [
-        1e-150, 1e-05, 0.5477225575051661, 0.7071067811865476, 1.224744871391589, 1.4142135623730951, 1.7320508075688772,
-        2.692582403567252, 31.62435770098738, 1e5, 775886589650.8329, 1e150,
+        1e-150, 1e-05, 0.5477225575051661, 0.7071067811865476, 1.224744871391589, 1.4142135623730951,
+        1.7320508075688772, 2.692582403567252, 31.62435770098738, 1e5, 775886589650.8329, 1e150,
     ]),
     "power 0.5": (lambda x: np.power(x, 0.5), (_POSITIVE[1:-1],), [
         1e-05, 0.5477225575051661, 0.7071067811865476, 1.224744871391589, 1.4142135623730951, 1.7320508075688772,

@@ -4,10 +4,10 @@ A model encloses, cell by cell, every value of a quantity q on a cell s = j(cent
 
     q(t) in 2^exponent (v + d t + e t^2 + Disc(0, r)).
 
-v, d, e are complex, r is real and holds every truncation and rounding error (K. Makino, M. Berz, "Taylor models and other
-validated functional inclusion methods", Int. J. Pure Appl. Math. 4 (2003) 379-456). An infinite or NaN radius means "not
-proved"; both fail every comparison radius < distance. The exponents keep sizes within 2^-100 ... 2^100, so that nothing
-overflows; exponent None stands for 0 in every cell, which spares the alignment of sums.
+v, d, e are complex, r is real and holds every truncation and rounding error (K. Makino, M. Berz, "Taylor models and
+other validated functional inclusion methods", Int. J. Pure Appl. Math. 4 (2003) 379-456). An infinite or NaN radius
+means "not proved"; both fail every comparison radius < distance. The exponents keep sizes within 2^-100 ... 2^100, so
+that nothing overflows; exponent None stands for 0 in every cell, which spares the alignment of sums.
 """
 
 from __future__ import annotations
@@ -119,8 +119,9 @@ def reciprocal(q: TaylorModel) -> TaylorModel:
 def exponential(q: TaylorModel) -> TaylorModel:
     """exp(q), scaled by an integer power of two where it is large or small.
 
-    exp(v + y0 + z) with y0 = d t + e t^2: |exp(y0) - 1 - y0 - y0^2/2| <= |y0|^3/6 sup exp(Re y0), and a disturbance z adds
-    sup exp(Re y0) expm1(|z|). Where that is worse than the plain bound sup|exp q|, the disc of that radius about 0 is used.
+    exp(v + y0 + z) with y0 = d t + e t^2: |exp(y0) - 1 - y0 - y0^2/2| <= |y0|^3/6 sup exp(Re y0), and a disturbance z
+    adds sup exp(Re y0) expm1(|z|). Where that is worse than the plain bound sup|exp q|, the disc of that radius about 0
+    is used.
     """
     v, d, e, r = _unscaled(q)
     size_d, size_e = np.abs(d), np.abs(e)
@@ -128,25 +129,34 @@ def exponential(q: TaylorModel) -> TaylorModel:
     value, exponent = _scaled_exponential(v)
     size = np.abs(value)
     disturbance = r + 2.0 * SLACK + 3.0 * UNIT * np.abs(v.real)  # rounding of exp itself, as if of its argument
-    swing = np.exp(np.abs(d.real) + np.abs(e.real)) * (1.0 + 4.0 * SLACK)
+    rise = np.abs(d.real) + np.abs(e.real)  # >= Re y0
+    swing = np.exp(rise) * (1.0 + 4.0 * SLACK)
     tail = size_d * size_e + 0.5 * size_e * size_e + sigma * sigma * sigma * swing / 6.0
     tail = tail + swing * np.expm1(disturbance) + 2.0 * SLACK * (1.0 + sigma + sigma * sigma)
-    r = outward(size * tail * (1.0 + SLACK))
-    bound = outward(size * swing * np.exp(disturbance) * (1.0 + SLACK))
-    use_disc = bound < r
-    model = TaylorModel(value, value * d, value * (e + 0.5 * d * d), r, exponent)
-    if use_disc.any():
-        zero = np.zeros_like(value)
-        model = choose(use_disc, TaylorModel(zero, zero, zero, bound, exponent), model)
-    return _without_far_exponents(model, v, r=_unscaled(q)[3], swing=np.abs(d.real) + np.abs(e.real))
+    radius = outward(size * tail * (1.0 + SLACK))
+    model = TaylorModel(value, value * d, value * (e + 0.5 * d * d), radius, exponent)
+    model = _or_disc(model, size, rise + disturbance)
+    return _without_far_exponents(model, v.real, rise + r)
+
+
+def _or_disc(model: TaylorModel, size: FloatArray, rise: FloatArray) -> TaylorModel:
+    """The disc of radius size * exp(rise) about 0 on the cells where that is less than the model's own radius."""
+    whole = np.where(rise > 60.0, np.rint(np.minimum(rise, LARGEST_EXPONENT_REAL) / LOG_2), 0.0)
+    bound = outward(size * np.exp(rise - whole * LOG_2) * (1.0 + 2.0 * SLACK + 4.0 * UNIT * rise))
+    use_disc = (bound < model.r) | (whole > 0.0)
+    if not use_disc.any():
+        return model
+    zero = np.zeros_like(model.v)
+    scale = model.exponent if not whole.any() else exponents(model) + whole.astype(np.int64)
+    return choose(use_disc, TaylorModel(zero, zero, zero, bound, scale), model)
 
 
 def real_power(q: TaylorModel, alpha: float) -> TaylorModel:
     """q^alpha by the branch that continues the principal value at v; proved where q is proved to exclude 0.
 
-    With q = v (1 + y + z), y = a t + b t^2, |z| <= rho: Taylor's formula with integral remainder bounds |(1 + y)^alpha - 1 -
-    alpha y - alpha (alpha - 1)/2 y^2| by |alpha (alpha - 1)(alpha - 2)|/6 |y|^3 max|1 + x y|^(alpha - 3), 0 <= x <= 1. For the
-    principal branch on the whole cell see ``argument_range``.
+    With q = v (1 + y + z), y = a t + b t^2, |z| <= rho: Taylor's formula with integral remainder bounds |(1 + y)^alpha
+    - 1 - alpha y - alpha (alpha - 1)/2 y^2| by |alpha (alpha - 1)(alpha - 2)|/6 |y|^3 max|1 + x y|^(alpha - 3), 0 <= x
+    <= 1. For the principal branch on the whole cell see ``argument_range``.
     """
     if alpha == 0.0:
         return constant(1.0, 0.0, 0, len(q.v))
@@ -157,7 +167,8 @@ def real_power(q: TaylorModel, alpha: float) -> TaylorModel:
     half_second = 0.5 * alpha * (alpha - 1.0)
     tail, whole = _power_tail(alpha, a, size_a, size_b, rho)
     tail = np.where(np.abs(w) > 0.0, tail, np.inf)  # the power of an overflow proves nothing
-    r = outward(np.abs(root) * (tail * (1.0 + 2.0 * (8.0 + abs(alpha)) * SLACK) + slack * (whole + tail)) * (1.0 + SLACK))
+    tail = tail * (1.0 + 2.0 * (8.0 + abs(alpha)) * SLACK) + slack * (whole + tail)
+    r = outward(np.abs(root) * tail * (1.0 + SLACK))
     model = TaylorModel(root, root * (alpha * a), root * (alpha * b + half_second * (a * a)), r, exponent)
     return _normalised(model, np.abs(root) * whole)
 
@@ -165,7 +176,7 @@ def real_power(q: TaylorModel, alpha: float) -> TaylorModel:
 def _power_tail(
     alpha: float, a: ComplexArray, size_a: FloatArray, size_b: FloatArray, rho: FloatArray
 ) -> tuple[FloatArray, FloatArray]:
-    """The remainder of (1 + y + z)^alpha beyond second order in t, and the sum of the sizes of the three coefficients."""
+    """The remainder of (1 + y + z)^alpha beyond second order in t, and the sum of the coefficients' sizes."""
     sigma = size_a + size_b
     one = 1.0 + 0.0 * a
     least = _segment_distance_lower(one, a) - size_b - 4.0 * SLACK * (1.0 + sigma)
@@ -213,14 +224,15 @@ def _scaled_exponential(v: ComplexArray) -> tuple[ComplexArray, IntArray | None]
     return np.exp(reduced), whole.astype(np.int64)
 
 
-def _without_far_exponents(model: TaylorModel, v: ComplexArray, r: FloatArray, swing: FloatArray) -> TaylorModel:
-    """Replace cells whose exponent has lost its digits: nothing proved, or a disc about 0 where the value is far below."""
-    far = ~(np.abs(v.real) < LARGEST_EXPONENT_REAL)
-    if not far.any() or model.exponent is None:
+def _without_far_exponents(model: TaylorModel, real: FloatArray, rise: FloatArray) -> TaylorModel:
+    """Replace cells whose exponent has lost its digits: not proved, or a disc about 0 where the value is far below."""
+    far = ~(np.abs(real) < LARGEST_EXPONENT_REAL)
+    if not far.any():
         return model
-    below = v.real + swing + r < -LARGEST_EXPONENT_REAL
-    zero = np.zeros_like(v)
-    disc = TaylorModel(zero, zero, zero, np.where(below, 1.0, np.inf), model.exponent)
+    below = real + rise < -LARGEST_EXPONENT_REAL
+    zero = np.zeros_like(model.v)
+    lowest = np.full(len(real), -int(LARGEST_EXPONENT_REAL), dtype=np.int64)
+    disc = TaylorModel(zero, zero, zero, np.where(below, 1.0, np.inf), lowest)
     return choose(far, disc, model)
 
 
@@ -252,7 +264,7 @@ def _model_distance_lower(v: ComplexArray, d: ComplexArray, e: ComplexArray, r: 
 
 
 def _segment_distance_lower(c: ComplexArray, d: ComplexArray) -> FloatArray:
-    """Distance of 0 to {c + d t, |t| <= 1}, rounded down: in the frame turned along d the segment lies on the real axis."""
+    """Distance of 0 to {c + d t, |t| <= 1}, rounded down: turned by -arg d the segment is parallel to the real axis."""
     length = np.abs(d)
     turned = c * np.conj(np.where(length > 1e-290, d / length, 1.0))
     beyond = np.maximum(np.abs(turned.real) - length, 0.0)
@@ -277,10 +289,10 @@ def argument_range(q: TaylorModel) -> tuple[FloatArray, FloatArray]:
     return principal + np.minimum(first, last) - spread - slack, principal + np.maximum(first, last) + spread + slack
 
 
-def rotate(q: TaylorModel, turn: ComplexArray | complex) -> TaylorModel:
-    """q times numbers of modulus 1 known within 8 units roundoff."""
+def rotate(q: TaylorModel, turn: ComplexArray | complex, slack: FloatArray | float = SLACK) -> TaylorModel:
+    """q times numbers of modulus 1, known within ``slack``."""
     size = _sizes(q.v, q.d, q.e)
-    r = outward(q.r * (1.0 + SLACK) + 2.0 * SLACK * size)
+    r = outward(q.r * (1.0 + slack) + (SLACK + slack) * size)
     return TaylorModel(q.v * turn, q.d * turn, q.e * turn, r, q.exponent)
 
 
@@ -348,10 +360,10 @@ def _unscaled(q: TaylorModel) -> tuple[ComplexArray, ComplexArray, ComplexArray,
 
 def _normalised(q: TaylorModel, size: FloatArray) -> TaylorModel:
     """Move sizes outside 2^-100 ... 2^100 into the exponent; exact but for underflow, which TINY covers."""
-    if 1.0 / LARGEST_SIZE < size.min(initial=1.0) and size.max(initial=1.0) < LARGEST_SIZE:
+    if size.min(initial=1.0) > 1.0 / LARGEST_SIZE and size.max(initial=1.0) < LARGEST_SIZE:
         return q
     size = np.where(np.isfinite(size), size, _sizes(q.v, q.d, q.e))  # unproved cells keep usable values
-    outside = np.isfinite(size) & (size > 0.0) & ~((1.0 / LARGEST_SIZE < size) & (size < LARGEST_SIZE))
+    outside = np.isfinite(size) & (size > 0.0) & ~((size > 1.0 / LARGEST_SIZE) & (size < LARGEST_SIZE))
     shift = np.where(outside, np.clip(np.frexp(size)[1], -FARTHEST_SHIFT, FARTHEST_SHIFT), 0).astype(np.int64)
     factor = np.ldexp(1.0, -shift)
     return TaylorModel(q.v * factor, q.d * factor, q.e * factor, q.r * factor + TINY, exponents(q) + shift)

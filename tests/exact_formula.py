@@ -11,6 +11,7 @@ from encircle.engine.declarations import FormulaBlock
 from encircle.engine.expression import Call, Expression, Name, Negative, Number, Operation
 from encircle.engine.formula import parse_formula
 
+OPERATIONS = {"+": mpmath.fadd, "-": mpmath.fsub, "*": mpmath.fmul, "/": mpmath.fdiv, "^": mpmath.power}
 FUNCTIONS = {
     "exp": mpmath.exp,
     "sqrt": mpmath.sqrt,
@@ -47,4 +48,4 @@ def _value(expression: Expression, parameters: Mapping[str, Fraction], s: mpmath
             return FUNCTIONS[function](_value(argument, parameters, s))
         case Operation(operator, left, right):
             a, b = _value(left, parameters, s), _value(right, parameters, s)
-            return {"+": mpmath.fadd, "-": mpmath.fsub, "*": mpmath.fmul, "/": mpmath.fdiv, "^": mpmath.power}[operator](a, b)
+            return OPERATIONS[operator](a, b)

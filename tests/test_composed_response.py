@@ -1,7 +1,9 @@
-"""Irrational formulas on cells: containment against 40-digit arithmetic, width, behaviour at 0, cuts, published counts."""
+"""Irrational formulas on cells: containment against 40-digit arithmetic, width, behaviour at 0, cuts, published counts.
+"""
 
 from __future__ import annotations
 
+import itertools
 import math
 from fractions import Fraction
 
@@ -12,7 +14,7 @@ from enclosure_checks import DIGITS, ratios
 from exact_formula import exact_value, formula_block
 
 from encircle.engine import hyperbolic, rounding, taylor_model
-from encircle.engine.composed_response import Composed, power_on_cells
+from encircle.engine.composed_response import Composed, Enclosure, power_on_cells
 from encircle.engine.errors import ProjectError
 from encircle.engine.taylor_model import TaylorModel, distance_from_zero_lower
 
@@ -50,6 +52,10 @@ FORMULAS = [
     ("1/(1 + (b*s)^0.9)^3", Fraction(0), 1e12),
     ("(-s)^0.5*sqrt(s)/(s + 1)", Fraction(1), 1e10),
     ("1/(sqrt(s) + exp(-T*s))", Fraction(0), 30.0),
+    ("((s + 1)^3*(s + a)^2)^0.37", Fraction(0), 0.5),
+    ("(s^3)^0.5 + 1", Fraction(0), 1e8),
+    ("sqrt(s^1.5/(s + 1))", Fraction(3, 4), 1e8),
+    ("sqrt(2)*tanh(sqrt(2*s + 2))/sqrt(s + 1)", Fraction(0), 1e8),
 ]
 NAMES = [text for text, _, _ in FORMULAS]
 
@@ -65,7 +71,9 @@ def random_cells(rng: np.random.Generator, count: int, highest: float) -> tuple[
     return centre, centre * 10.0 ** rng.uniform(-12, -0.4, count)
 
 
-def cell_ratios(text: str, enclosure: tuple, centre: np.ndarray, half: np.ndarray, t: np.ndarray, power: Fraction) -> np.ndarray:
+def cell_ratios(
+    text: str, enclosure: Enclosure | TaylorModel, centre: np.ndarray, half: np.ndarray, t: np.ndarray, power: Fraction
+) -> np.ndarray:
     """error/radius of H/s^power at j(centre + half t)."""
     block = formula_block(text, **PARAMETERS)
     with mpmath.workdps(DIGITS):
@@ -124,14 +132,14 @@ def test_the_cell_at_zero(text: str, power: Fraction, highest: float) -> None:
     H = composed(text)
     t = np.concatenate([rng.uniform(-1, 1, 6), -1 + 10.0 ** rng.uniform(-12, -1, 6)])
     regular = TaylorModel(*H.regular_on_cells(half, half))
-    assert cell_ratios(text, tuple(regular), half, half, t, power).max() <= 1.0
+    assert cell_ratios(text, regular, half, half, t, power).max() <= 1.0
     assert np.all(regular.r < 0.2 * np.abs(regular.v))
     assert np.all(distance_from_zero_lower(regular) > 0)
     whole = TaylorModel(*H.on_cells(half, half))
     if power < 0:
         assert np.all(whole.r == np.inf)
     else:
-        assert cell_ratios(text, tuple(whole), half, half, t, Fraction(0)).max() <= 1.0
+        assert cell_ratios(text, whole, half, half, t, Fraction(0)).max() <= 1.0
     if power > 0:
         assert not (distance_from_zero_lower(whole) > 0).any()
 
@@ -184,12 +192,7 @@ def test_values_on_the_cut_are_the_limit_from_the_right() -> None:
 
 
 def test_a_cell_that_straddles_a_cut_is_not_proved() -> None:
-    """(s^1.5 + 1)^0.5: no cut near the axis; ((s - 1)^3)^0.5: the cube crosses the negative axis at w = tan 60 degrees.
-
-    arg (j w - 1) = pi - atan w, three times that passes 3 pi, hence w = 0, and pi at atan w = 2 pi/3 - never; it passes 2 pi +
-    pi at w = 0 and pi + 2 pi k between: 3 (pi - atan w) = 2 pi +- pi gives atan w = 0 only, so the principal cube stays off it.
-    With (s + 1)^3: 3 atan w = pi at w = sqrt 3.
-    """
+    """(1 + j w)^3 crosses the negative real axis where 3 atan w = pi, at w = sqrt 3; beyond it the root turns round."""
     H = composed("((s + 1)^3)^0.5")
     centre = np.array([1.0, 1.7, math.sqrt(3.0), 1.8, 3.0])
     assert list(np.isfinite(H.on_cells(centre, np.full(5, 0.01))[3])) == [True, True, False, True, True]
@@ -222,7 +225,8 @@ def test_power_on_cells_is_contained_and_touches_zero() -> None:
         t = np.where(half == centre, rng.uniform(-0.999, 1, 40), rng.choice([-1.0, 1.0], 40))
         model = TaylorModel(*power_on_cells(alpha, 0.7, centre, half))
         with mpmath.workdps(DIGITS):
-            points = [mpmath.mpc(0, mpmath.mpf(c) + mpmath.mpf(h) * mpmath.mpf(x)) for c, h, x in zip(centre, half, t)]
+            cells = zip(centre, half, t, strict=True)
+            points = [mpmath.mpc(0, mpmath.mpf(c) + mpmath.mpf(h) * mpmath.mpf(x)) for c, h, x in cells]
             values = [mpmath.power(s / (s + mpmath.mpf(0.7)), mpmath.mpf(alpha)) for s in points]
             assert ratios(model, t, values).max() <= 1.0
         assert np.isfinite(model.r[half < 0.4 * centre]).all()
@@ -275,7 +279,7 @@ def test_features_are_the_corners_of_the_formula() -> None:
 
 
 def windings(H: Composed, gain: float) -> int:
-    """Z of 1 + gain H for a formula bounded at 0 and below 1/gain on |s| >= 1e4: Lemma of convex cells, both half axes."""
+    """Z of 1 + gain H, H bounded at 0 and below 1/gain on |s| >= 1e4: the turns of convex cells, both half axes."""
     edges = np.concatenate([[0.0], np.logspace(-3, 4, 60)])
     lower, upper = edges[:-1], edges[1:]
     starts: dict[float, tuple[complex, complex]] = {}
@@ -287,7 +291,7 @@ def windings(H: Composed, gain: float) -> int:
             proved = distance_from_zero_lower(one_plus) > 0
         scale = np.ldexp(1.0, taylor_model.exponents(one_plus))
         first, last = ((one_plus.v + sign * one_plus.d + one_plus.e) * scale for sign in (-1.0, 1.0))
-        starts.update({w: (a, b) for w, a, b in zip(lower[proved], first[proved], last[proved])})
+        starts.update({w: (a, b) for w, a, b in zip(lower[proved], first[proved], last[proved], strict=True)})
         lower, upper, centre = lower[~proved], upper[~proved], centre[~proved]
         lower, upper = np.concatenate([lower, centre]), np.concatenate([centre, upper])
         if not len(lower):
@@ -295,7 +299,7 @@ def windings(H: Composed, gain: float) -> int:
     assert not len(lower), "undecided"
     ends = [starts[w] for w in sorted(starts)]
     turn = sum(np.angle(b / a) for a, b in ends)
-    turn += sum(np.angle(following[0] / before[1]) for before, following in zip(ends[:-1], ends[1:]))
+    turn += sum(np.angle(following[0] / before[1]) for before, following in itertools.pairwise(ends))
     turn += np.angle(1.0 / ends[-1][1]) - np.angle(1.0 / ends[0][0])
     return round(-turn / np.pi)
 
@@ -303,9 +307,9 @@ def windings(H: Composed, gain: float) -> int:
 def test_critical_gain_of_one_dimensional_conduction() -> None:
     """1 + K exp(-sqrt s) first touches 0 at K = e^pi.
 
-    On s = j w, sqrt s = (1 + j) sqrt(w/2), so exp(-sqrt s) is real and negative first at sqrt(w/2) = pi, w = 2 pi^2, with
-    modulus e^-pi: elementary, and the first eigenvalue of boundary control of the half line; common textbook example of a
-    distributed lag (from memory).
+    On s = j w, sqrt s = (1 + j) sqrt(w/2), so exp(-sqrt s) is real and negative first at sqrt(w/2) = pi, w = 2 pi^2,
+    with modulus e^-pi: elementary, and the first eigenvalue of boundary control of the half line; common textbook
+    example of a distributed lag (from memory).
     """
     H = composed("exp(-sqrt(s))")
     assert H.at_points(np.array([2 * math.pi**2])) == pytest.approx([-math.exp(-math.pi)], rel=1e-12)

@@ -1,4 +1,6 @@
-"""Growth at infinity: containment on |s| >= R, Re s >= 0, against 40-digit arithmetic, and what must be known or unknown."""
+"""Growth at infinity: containment on |s| >= R, Re s >= 0, against 40-digit arithmetic, and what must be known or
+unknown.
+"""
 
 from __future__ import annotations
 
@@ -40,7 +42,8 @@ def ratio(found: Growth, place: int, s: mpmath.mpc, value: mpmath.mpc) -> float:
     """error/bound at one point for the radius number ``place``; 0 where the bound is infinite."""
     if not np.isfinite(found.bound[place]):
         return 0.0
-    allowed = mpmath.mpf(float(found.bound[place])) * (abs(s) / mpmath.mpf(float(found.radius[place]))) ** _exact(found.order)
+    bound, radius = mpmath.mpf(float(found.bound[place])), mpmath.mpf(float(found.radius[place]))
+    allowed = bound * (abs(s) / radius) ** _exact(found.order)
     allowed += mpmath.mpf(10) ** -76 * abs(value)  # the oracle's own rounding
     for power, coefficient in found.terms:
         middle = (coefficient.lower + coefficient.upper) / 2
@@ -88,6 +91,7 @@ LEADING = [
     ("(1 - exp(-T*s))/(T*s)/(1 + sqrt(s))", 1 / 0.37, Fraction(-3, 2)),
     ("1/(sqrt(s) + exp(-T*s))", 1.0, Fraction(-1, 2)),
     ("((s + 1)^1.5)^0.2", 1.0, Fraction(3, 10)),
+    ("sqrt(s^2/(s + 1))*(s + a)^-0.25", 1.0, Fraction(1, 4)),
 ]
 # formula, a bound of |H| at |s| = 1e6, the power with which it holds
 BOUNDED = [
@@ -233,6 +237,7 @@ def test_cut_of_the_root_is_told_from_the_arguments() -> None:
     assert growth.off_negative_axis(Fraction(0), [(shifted, Fraction(1)), (shifted, Fraction(1))]).all()
     assert not growth.off_negative_axis(Fraction(0), [(square, Fraction(1))]).any()
     assert not growth.off_negative_axis(Fraction(2), [(shifted, Fraction(1))]).any()
+    assert growth.off_negative_axis(Fraction(2), [(shifted, Fraction(-1))]).all()
     assert not growth.off_negative_axis(Fraction(2), []).any()
 
 

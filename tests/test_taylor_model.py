@@ -33,6 +33,10 @@ def _power(alpha: float) -> Operation:
     )
 
 
+def _scaled(z: mpmath.mpc) -> mpmath.mpc:
+    return z * mpmath.mpc(1.5, -0.3) * 32
+
+
 def _sinhc(z: mpmath.mpc) -> mpmath.mpc:
     return mpmath.sinh(mpmath.sqrt(z)) / mpmath.sqrt(z)
 
@@ -41,9 +45,9 @@ FAMILIES = {
     "sums and products": {
         "add": Operation(taylor_model.add, lambda a, b: a + b, 2),
         "multiply": Operation(taylor_model.multiply, lambda a, b: a * b, 2),
-        "scale": Operation(lambda q: taylor_model.scale(q, 1.7 - 0.3j, 0.0, 5), lambda a: a * mpmath.mpc(1.7, -0.3) * 32),
+        "scale": Operation(lambda q: taylor_model.scale(q, 1.5 - 0.3j, 0.0, 5), _scaled),
         "add constant": Operation(lambda q: taylor_model.add_constant(q, -1.0), lambda a: a - 1),
-        "rotate": Operation(lambda q: taylor_model.rotate(q, cmath.exp(0.7j)), lambda a: a * mpmath.expj(mpmath.mpf(0.7))),
+        "rotate": Operation(lambda q: taylor_model.rotate(q, cmath.exp(0.7j)), lambda a: a * mpmath.expj(0.7)),
     },
     "reciprocals": {
         "reciprocal": Operation(taylor_model.reciprocal, lambda a: 1 / a),
@@ -253,6 +257,15 @@ def test_exponentials_far_outside_double_precision() -> None:
         truth = mpmath.exp(mpmath.mpc(1e5, 2))
         nominal = polynomial_values(model, np.zeros(4))[0]
         assert abs(truth - nominal) <= mpmath.ldexp(mpmath.mpf(model.r[0]), int(model.exponent[0]))
+
+
+def test_a_wide_cell_of_a_decaying_exponential_becomes_a_small_disc() -> None:
+    """Re q between -9000 and -11000: |exp q| <= exp(-9000), although the swing exp(1000) itself overflows."""
+    q = TaylorModel(np.array([-10000.0 + 3j]), np.array([1000.0 - 900j]), np.zeros(1, complex), np.zeros(1))
+    with np.errstate(all="ignore"):
+        model = taylor_model.exponential(q)
+    assert model.v[0] == 0
+    assert np.log2(model.r[0]) + taylor_model.exponents(model)[0] == pytest.approx(-9000 / np.log(2.0), abs=0.01)
 
 
 def test_cells_do_not_influence_each_other() -> None:
