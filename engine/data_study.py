@@ -1,17 +1,19 @@
-"""One loop with measured blocks: the chord curve and its crossings, ranges of gain and margins as the band guarantees them."""
+"""One loop with measured blocks: the chord curve and its crossings, and what the band guarantees of gain and margins."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 
 from encircle.engine.band_cells import BandOfLoop
+from encircle.engine.contact_search import band_on_counted_cells
 from encircle.engine.counting import Counter, Gains
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc, unbounded_arcs, unit_crossings
 from encircle.engine.data_crossings import chord_crossings, off_the_axis
-from encircle.engine.data_margins import band_edges, data_margins
-from encircle.engine.data_ranges import data_ranges
+from encircle.engine.data_margins import data_margins
+from encircle.engine.data_ranges import data_ranges, range_between
 from encircle.engine.loop_study import DENSITIES, LoopStudy, sample_loop
 from encircle.engine.open_loop import OpenLoop
+from encircle.engine.sampled_curve import SampledCurve
 
 
 def study_data(
@@ -19,27 +21,30 @@ def study_data(
 ) -> LoopStudy:
     """What curve and band show, held against the counts Z = ``unstable`` and N = ``windings``.
 
-    The sampling is refined until the chord curve winds as the count says; ArithmeticError where it never does.
+    Raises ArithmeticError where the chord curve never winds as the count says.
     """
     band = BandOfLoop(counter, loop.stage, gains)
-    for density in DENSITIES:
-        curve = off_the_axis(sample_loop(counter, loop, density=density))
-        crossings = chord_crossings(loop, band, curve)
-        arcs = unbounded_arcs(loop, curve)
-        turns = _turns(crossings, arcs)
-        if windings is None or turns == windings:
-            break
-    else:
-        raise ArithmeticError(f"the chords turn {turns} times about -1, the count says {windings}")
+    start = band_on_counted_cells(counter, loop, band)
+    curve, crossings, arcs = _chord_curve(counter, loop, band, windings)
 
     def count(factors: Sequence[float]) -> list[int | None]:
         return counter.count_at_factors(loop.stage.part, loop.stage.loop, gains, factors)
 
-    edges = band_edges(counter, loop)
-    margins = data_margins(band, edges, unit_crossings(loop, curve), unit)
-    ranges = data_ranges(lambda factor: BandOfLoop(counter, loop.stage, gains, factor), edges, count, unstable)
+    margins, increase, decrease = data_margins(band, start, unit_crossings(loop, curve), unit)
+    present = range_between(1.0, increase, decrease, unstable)
+    ranges = data_ranges(band, start, present, count)
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, margins)
 
 
-def _turns(crossings: Sequence[NegativeCrossing], arcs: Sequence[UnboundedArc]) -> int:
-    return sum(c.turns for c in crossings if c.value < -1.0) + sum(arc.turns for arc in arcs)
+def _chord_curve(
+    counter: Counter, loop: OpenLoop, band: BandOfLoop, windings: int | None
+) -> tuple[SampledCurve, list[NegativeCrossing], list[UnboundedArc]]:
+    """The curve of the chords with its crossings and arcs, sampled ever finer until they wind as counted."""
+    for density in DENSITIES:
+        curve = off_the_axis(sample_loop(counter, loop, density=density))
+        crossings = chord_crossings(loop, band, curve)
+        arcs = unbounded_arcs(loop, curve)
+        turns = sum(c.turns for c in crossings if c.value < -1.0) + sum(arc.turns for arc in arcs)
+        if windings is None or turns == windings:
+            return curve, crossings, arcs
+    raise ArithmeticError(f"the chords turn {turns} times about -1, the count says {windings}")

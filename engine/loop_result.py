@@ -11,8 +11,8 @@ from encircle.engine.axis_poles import LeftFactor, axis_poles_left
 from encircle.engine.closing_order import PartKey, Stage
 from encircle.engine.counting import Counter, Gains, PartCount
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc
-from encircle.engine.declarations import MeasuredBlock
 from encircle.engine.data_study import study_data
+from encircle.engine.declarations import MeasuredBlock
 from encircle.engine.gain_map import FactorRange
 from encircle.engine.limits import judge
 from encircle.engine.loop_study import LoopStudy, study

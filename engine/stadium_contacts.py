@@ -1,8 +1,8 @@
 """Where a stadium first meets -1 when it is scaled or turned, and how near it comes: closed forms, cell by cell.
 
-A stadium is a segment widened by a disc: {c + q t + z, |t| <= 1, |z| <= rho}, with -1 outside. All its extremes lie on its
-boundary, two circles and two straight sides, whose points are members of the closed set; so each extreme is the best of a
-few candidates.
+A stadium is a segment widened by a disc: {c + q t + z, |t| <= 1, |z| <= rho}, with -1 outside. All its extremes lie on
+its boundary, two circles and two straight sides, whose points are members of the closed set; so each extreme is the best
+of a few candidates.
 """
 
 from __future__ import annotations
@@ -23,12 +23,32 @@ class Stadiums(NamedTuple):
     q: ComplexArray
     rho: FloatArray
 
+    @property
+    def reach(self) -> FloatArray:
+        """The largest distance of a member from the centre."""
+        return np.abs(self.q) + self.rho
+
+    def columns(self, mask: np.ndarray) -> Stadiums:
+        """Those of the last axis for which ``mask`` holds."""
+        return Stadiums(self.c[..., mask], self.q[..., mask], self.rho[..., mask])
+
+    def where(self, mask: np.ndarray) -> Stadiums:
+        """Those for which ``mask`` holds, as arrays of one dimension."""
+        return Stadiums(self.c[mask], self.q[mask], self.rho[mask])
+
 
 class Turns(NamedTuple):
-    """Angles in (0, 2 pi) by which a set turns until it meets -1: clockwise (lag) and the other way (lead); inf if never."""
+    """Angles in (0, 2 pi) by which a set turns until it meets -1: clockwise (lag), the other way (lead); inf if never."""
 
     lag: FloatArray
     lead: FloatArray
+
+
+class RealPart(NamedTuple):
+    """The least and the largest real member of each set; NaN where it has none."""
+
+    least: FloatArray
+    most: FloatArray
 
 
 def distance(sets: Stadiums, point: complex) -> FloatArray:
@@ -41,15 +61,23 @@ def distance(sets: Stadiums, point: complex) -> FloatArray:
 
 
 def least_ratio(sets: Stadiums) -> FloatArray:
-    """The least |1 + z|/|z| over each stadium that excludes -1; inf only where z = 0 alone.
+    """Lower bounds of |1 + z|/|z| over stadiums that exclude -1, exact wherever they may be the least of all.
 
-    z/(1 + z) = 1 - 1/(1 + z) maps a disc to a disc; along a side, the derivative of |1 + z|^2/|z|^2 has a quadratic numerator.
+    Elsewhere a bound by centre and reach stands, once it exceeds the value at some centre.
     """
-    ends = np.maximum(_largest_over_disc(sets.c + sets.q, sets.rho), _largest_over_disc(sets.c - sets.q, sets.rho))
     with np.errstate(all="ignore"):
-        least = 1.0 / ends
-        for side in _sides(sets):
-            least = np.fmin(least, _least_ratio_on_side(side, sets.q))
+        crude = np.maximum(np.abs(1.0 + sets.c) - sets.reach, 0.0) / (np.abs(sets.c) + sets.reach)
+        close = ~(crude > np.fmin.reduce(np.abs(1.0 + sets.c) / np.abs(sets.c), axis=None, initial=np.inf))
+        crude[close] = _least_ratio_exactly(sets.where(close))
+    return crude
+
+
+def _least_ratio_exactly(sets: Stadiums) -> FloatArray:
+    """z/(1 + z) = 1 - 1/(1 + z) maps discs to discs; along a side, (|1 + z|/|z|)^2 has a derivative with quadratic numerator."""
+    ends = np.maximum(_largest_over_disc(sets.c + sets.q, sets.rho), _largest_over_disc(sets.c - sets.q, sets.rho))
+    least = 1.0 / ends
+    for side in _sides(sets):
+        least = np.fmin(least, _least_ratio_on_side(side, sets.q))
     return least
 
 
@@ -86,26 +114,36 @@ def _sides(sets: Stadiums) -> tuple[ComplexArray, ComplexArray]:
     return sets.c + normal, sets.c - normal
 
 
-def real_points(sets: Stadiums) -> FloatArray:
-    """(6, ...) points of the real axis on each boundary, NaN where there is none: their extremes bound the part inside."""
+def real_part(sets: Stadiums) -> RealPart:
+    """The ends of each stadium's part of the real axis; they lie on its boundary."""
+    least, most = np.full((2, *sets.rho.shape), np.nan)
+    near = np.abs(sets.c.imag) <= sets.reach
     with np.errstate(all="ignore"):
-        points = []
-        for end in (sets.c + sets.q, sets.c - sets.q):
-            half = np.sqrt((sets.rho - end.imag) * (sets.rho + end.imag))
-            points += [end.real - half, end.real + half]
-        for side in _sides(sets):
-            t = -side.imag / sets.q.imag
-            points.append(np.where(np.abs(t) <= 1.0, side.real + t * sets.q.real, np.nan))
-    return np.array(points)
+        points = np.array(_real_points(sets.where(near))).reshape(6, -1)
+    least[near], most[near] = np.fmin.reduce(points), np.fmax.reduce(points)
+    return RealPart(least, most)
+
+
+def _real_points(sets: Stadiums) -> list[FloatArray]:
+    """Points of the real axis on the boundary, NaN where there is none."""
+    points = []
+    for end in (sets.c + sets.q, sets.c - sets.q):
+        half = np.sqrt((sets.rho - end.imag) * (sets.rho + end.imag))
+        points += [end.real - half, end.real + half]
+    for side in _sides(sets):
+        t = -side.imag / sets.q.imag
+        points.append(np.where(np.abs(t) <= 1.0, side.real + t * sets.q.real, np.nan))
+    return points
 
 
 def turns(sets: Stadiums) -> Turns:
     """How far each stadium turns about 0 until it meets -1: its points on the unit circle, as angles from -1."""
-    lag, lead = np.full(sets.rho.shape, np.inf), np.full(sets.rho.shape, np.inf)
+    lag, lead = np.full((2, *sets.rho.shape), np.inf)
+    near = np.abs(np.abs(sets.c) - 1.0) <= sets.reach
     with np.errstate(all="ignore"):
-        for angle in _circle_angles(sets):
-            lag = np.fmin(lag, np.mod(angle - np.pi, FULL_TURN))
-            lead = np.fmin(lead, np.mod(np.pi - angle, FULL_TURN))
+        angles = np.array(_circle_angles(sets.where(near))).reshape(8, -1)
+        lag[near] = np.fmin.reduce(np.mod(angles - np.pi, FULL_TURN), initial=np.inf)
+        lead[near] = np.fmin.reduce(np.mod(np.pi - angles, FULL_TURN), initial=np.inf)
     return Turns(lag, lead)
 
 
