@@ -37,7 +37,7 @@ async def test_every_key_of_the_registry_acts_and_leaves_a_whole_screen(size: tu
         for action in ACTIONS:
             if action.id in ("quit", "suspend"):
                 continue
-            for key in action.keys:
+            for key in action.keys if size == (120, 40) else action.keys[:1]:
                 rows = await press(pilot, key)
                 assert len(rows) == size[1]
                 assert all(len(row) == size[0] for row in rows)
@@ -110,7 +110,7 @@ async def test_steps_up_and_down_come_back_to_the_gain_of_the_file_exactly() -> 
     async with EncircleApp(FakeProject()).run_test(size=(120, 40)) as pilot:
         await settled(pilot)
         start = shown_text(pilot.app)  # type: ignore[arg-type]
-        await press(pilot, *(["plus"] * 3), *(["comma"] * 30))
+        await press(pilot, "plus", *(["comma"] * 10))
         assert shown_text(pilot.app) == start  # type: ignore[arg-type]
 
 

@@ -188,7 +188,7 @@ def test_no_margins_are_said_to_be_none() -> None:
 def test_narrow_panels_keep_status_quantity_and_value(width: int) -> None:
     lines = texts(margins_rows(LOOP, LOOP, "Hz", width))
     if width >= 36:
-        assert any(line.startswith(" met phase") and "71.26°" in line and "≥ 45°" in line for line in lines)
+        assert any(line.startswith(" met    phase") and "71.26°" in line and "≥ 45°" in line for line in lines)
 
 
 # ---- turns ---------------------------------------------------------------------------------------
