@@ -21,7 +21,6 @@ AGREEMENT = 1e-7  # relative, between bound and middle
 PARTS = 8  # of a cell that is split
 MOST_CELLS = 40_000  # evaluated before the bounds are taken as they are
 NARROWEST = 1e-12  # cells are split down to this part of their frequency
-FIRST_MIDDLES = 16  # cells with the least bounds whose middles are looked at before anything is split
 FAR_RATIO = 1.6  # beyond the counted cells L is followed in such steps ...
 FAR_STEPS = 48  # ... to 6e9 times the last edge
 TAIL_RATIO = 1.05  # a narrow cell there stands for infinity
@@ -45,18 +44,19 @@ class FirstContact:
 
 @dataclass(frozen=True, slots=True)
 class BandCells:
-    """A band on the cells that a search starts from: ``lower``, ``upper`` (n,) in rad/s, and a last one for infinity."""
+    """A band on the cells that a search starts from, ``lower``, ``upper`` (n,) in rad/s, at their middles, and at infinity."""
 
     lower: FloatArray
     upper: FloatArray
     cells: CellSets
+    middles: CellSets
     tail: CellSets
     tail_upper: FloatArray
 
     def scaled(self, factor: float) -> BandCells:
         """The same for factor times L."""
-        tail = self.tail.scaled(factor)
-        return BandCells(self.lower, self.upper, self.cells.scaled(factor), tail, self.tail_upper)
+        scaled = [sets.scaled(factor) for sets in (self.cells, self.middles, self.tail)]
+        return BandCells(self.lower, self.upper, *scaled, self.tail_upper)
 
 
 def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) -> BandCells:
@@ -66,8 +66,9 @@ def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) ->
     far = edges[-1] * FAR_RATIO ** np.arange(1.0, FAR_STEPS + 1.0)
     edges = np.concatenate([np.sort(np.concatenate([edges, system.first_lines])), far])
     lower, upper, end = edges[:-1], edges[1:], edges[-1:]
-    tail_upper = TAIL_RATIO * end
-    return BandCells(lower, upper, band.on_cells(lower, upper), band.on_cells(end, tail_upper), tail_upper)
+    middle, tail_upper = 0.5 * (lower + upper), TAIL_RATIO * end
+    cells, middles, tail = band.on_cells(lower, upper), band.on_cells(middle, middle), band.on_cells(end, tail_upper)
+    return BandCells(lower, upper, cells, middles, tail, tail_upper)
 
 
 def least_contacts(band: BandOfLoop, start: BandCells, contacts: Contacts) -> list[FirstContact]:
@@ -85,15 +86,13 @@ class _Search:
         tail = self._contacts(start.tail, start.tail_upper)
         self._least = [FirstContact(float(value), np.inf, np.inf) for value in tail[:, 0]]
         lower, upper = start.lower, start.upper
-        bound = self._contacts(start.cells, upper)
-        promising = np.unique(np.argsort(bound, axis=1)[:, :FIRST_MIDDLES])
-        middle = 0.5 * (lower + upper)[promising]
-        reached = self._contacts(self._band.on_cells(middle, middle), middle)
-        best = np.minimum(tail[:, 0], reached.min(axis=1))
+        bound, reached = self._contacts(start.cells, upper), self._contacts(start.middles, 0.5 * (lower + upper))
+        best = tail[:, 0]
         while len(lower):
+            best = np.minimum(best, reached.min(axis=1))
             lower, upper = self._divide(lower, upper, bound, best)
-            bound, reached = self._level(lower, upper)
-            best = np.minimum(best, reached.min(axis=1, initial=np.inf))
+            if len(lower):
+                bound, reached = self._level(lower, upper)
         return self._least
 
     def _level(self, lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:

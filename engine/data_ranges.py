@@ -72,22 +72,21 @@ def free_stretches(band: BandOfLoop, start: BandCells) -> FloatArray:
 
 def _refined(band: BandOfLoop, start: BandCells) -> list[CellSets]:
     """Sets on cells on which L moves little against its own size and the width that the data leave."""
-    lower, upper, cells = start.lower, start.upper, start.cells
+    lower, upper, cells, middles = start.lower, start.upper, start.cells, start.middles
     done: list[CellSets] = []
     for _ in range(ROUNDS):
-        split = _moves_far(band, lower, upper, cells)
+        split = _moves_far(cells, middles)
         done.append(cells.where(~split))
         lower, upper = parts_of(lower[split], upper[split])
-        cells = band.on_cells(lower, upper)
+        middle = 0.5 * (lower + upper)
+        cells, middles = band.on_cells(lower, upper), band.on_cells(middle, middle)
     return [*done, cells]
 
 
-def _moves_far(band: BandOfLoop, lower: FloatArray, upper: FloatArray, cells: CellSets) -> np.ndarray:
+def _moves_far(cells: CellSets, middles: CellSets) -> np.ndarray:
     """Cells whose set is wide although the data leave little at the cell's middle."""
     with np.errstate(all="ignore"):
-        size = np.abs(cells.sets.c)
-        matters = np.where(cells.inverted, size < 1.0 / SMALLEST, size > SMALLEST)
-        wide = matters & ~(cells.sets.size <= LARGEST_EXTENT * size)
-    middle = 0.5 * (lower + upper)[wide]
-    wide[wide] = ~(cells.sets.size[wide] <= 2.0 * band.on_cells(middle, middle).sets.size)
-    return wide
+        size = np.abs(middles.sets.c)
+        matters = np.where(middles.inverted, size < 1.0 / SMALLEST, size > SMALLEST)
+        wide: np.ndarray = ~(cells.sets.size <= LARGEST_EXTENT * size + 2.0 * middles.sets.size)
+    return wide & matters
