@@ -210,6 +210,12 @@ def test_decimal_points_and_commas_may_not_be_mixed(tmp_path: Path) -> None:
     assert "mixed" in refusal("frequency_hz;real;imag\n1.234,5;2;3\n2;1;1\n", tmp_path)
 
 
+def test_the_first_of_several_repeats_is_named(tmp_path: Path) -> None:
+    text = "frequency_hz,real,imag\n1,1,1\n4,1,1\n4,1,1\n1,1,1\n"
+    assert "line 4: the frequency of line 3 is given again" in refusal(text, tmp_path)
+    assert "line 4: the frequency of line 2" in refusal(text.replace("4,1,1\n1,1,1\n", "1,1,1\n4,1,1\n"), tmp_path)
+
+
 def test_a_magnitude_is_not_negative(tmp_path: Path) -> None:
     text = "frequency_hz,magnitude,phase_deg\n1,1,0\n2,-1,0\n"
     assert "line 3: `magnitude` must not be below 0" in refusal(text, tmp_path)
