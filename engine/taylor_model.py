@@ -74,6 +74,8 @@ def negate(p: TaylorModel) -> TaylorModel:
 
 def scale(p: TaylorModel, factor: complex, radius: float = 0.0, exponent: int = 0) -> TaylorModel:
     """2^exponent Disc(factor, radius) times p."""
+    if radius == 0.0 and exponent == 0 and factor in (1.0, -1.0):
+        return p if factor == 1.0 else negate(p)
     size = _sizes(p.v, p.d, p.e)
     modulus = abs(factor)
     r = outward((modulus + radius) * p.r + (radius + SLACK * modulus) * size)

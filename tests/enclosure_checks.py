@@ -42,8 +42,9 @@ def random_member(rng: np.random.Generator, model: TaylorModel) -> Member:
     turn = np.exp(2j * np.pi * rng.random(n))
     scale = exponents(model)
     values = [
-        value + mpmath.ldexp(1, int(scale[i])) * mpmath.mpf(float(model.r[i])) * exact(turn[i]) * (1 - mpmath.mpf(10) **
-        -15) for i, value in enumerate(polynomial_values(model, t))
+        value
+        + mpmath.ldexp(1, int(scale[i])) * mpmath.mpf(float(model.r[i])) * exact(turn[i]) * (1 - mpmath.mpf(10) ** -15)
+        for i, value in enumerate(polynomial_values(model, t))
     ]
     return Member(t, values)
 
@@ -78,8 +79,10 @@ def without_radius(model: TaylorModel, shrink: float = 1.0) -> TaylorModel:
 
 
 def operation_ratios(
-    operation: Callable[..., TaylorModel], truth: Callable[..., mpmath.mpc], rng: np.random.Generator, *inputs:
-    TaylorModel
+    operation: Callable[..., TaylorModel],
+    truth: Callable[..., mpmath.mpc],
+    rng: np.random.Generator,
+    *inputs: TaylorModel,
 ) -> tuple[np.ndarray, TaylorModel]:
     """error/radius of an operation on random members of its inputs with equal t, and the enclosing models."""
     with mpmath.workdps(DIGITS), np.errstate(all="ignore"):

@@ -1,5 +1,4 @@
-"""Irrational formulas on cells: containment against 40-digit arithmetic, width, behaviour at 0, cuts, published counts.
-"""
+"""Irrational formulas on cells: containment against 40-digit arithmetic, width, behaviour at 0, cuts, published counts."""
 
 from __future__ import annotations
 

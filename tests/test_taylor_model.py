@@ -128,8 +128,7 @@ def test_own_remainder_is_sharp_and_of_third_order(name: str) -> None:
     assert found.max() > SHARPEST
     with np.errstate(all="ignore"):
         wide, narrow = (
-            operation.on_models(*[without_radius(model, shrink) for model in inputs])
-            for shrink in (1e-2, 5e-3)
+            operation.on_models(*[without_radius(model, shrink) for model in inputs]) for shrink in (1e-2, 5e-3)
         )
     truncation = wide.r > 1e5 * WIDTH * np.abs(wide.v)
     assert truncation.any()
