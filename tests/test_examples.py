@@ -135,11 +135,21 @@ def test_bearing_without_its_declaration_is_unstable(tmp_path: Path) -> None:
     lines = [line for line in text.splitlines() if not line.startswith("leaves_unstable")]
     (tmp_path / "bearing.toml").write_text("\n".join(lines), encoding="utf-8")
     assert open_project(tmp_path / "bearing.toml").loop("current").verdict == "unstable"
-    wider = text.replace("roll_off = 2", "roll_off = 2\nbetween_lines = 4")
+
+
+@pytest.mark.parametrize(("between_lines", "verdict", "met"), [(2, "stable", False), (8, "undecided", None)])
+def test_a_wider_band_costs_the_limit_and_then_the_verdict(
+    between_lines: int, verdict: str, met: bool | None, tmp_path: Path
+) -> None:
+    shutil.copy(EXAMPLES / "bearing" / "flexible_mode.csv", tmp_path)
+    text = (EXAMPLES / "bearing" / "bearing.toml").read_text(encoding="utf-8")
+    wider = text.replace("roll_off = 2", f"roll_off = 2\nbetween_lines = {between_lines}")
     (tmp_path / "bearing.toml").write_text(wider, encoding="utf-8")
     position = open_project(tmp_path / "bearing.toml").loop("position")
-    assert position.verdict == "undecided"
-    assert position.undecided
+    assert position.verdict == verdict
+    assert [limit.met for limit in position.limits] == [met]
+    assert all("would decide" in stretch.why for stretch in position.undecided)
+    assert bool(position.undecided) == (verdict == "undecided")
 
 
 def test_the_measurement_is_made_again_byte_for_byte(tmp_path: Path) -> None:
