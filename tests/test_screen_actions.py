@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import os
+import subprocess
+import sys
 import threading
 from collections import Counter
 from collections.abc import Callable
@@ -176,6 +179,13 @@ def test_settings_of_the_user_are_left_alone() -> None:
     local: dict[str, str] = {}
     terminal_session.prepare(local)
     assert "ESCDELAY" not in local
+
+
+def test_textual_reads_the_settings_made_for_it() -> None:
+    asked = "import encircle.tui.app, textual.constants as c; print(c.ESCAPE_DELAY, c.MAX_FPS)"
+    environment = {**os.environ, "SSH_TTY": "/dev/pts/3"}
+    told = subprocess.run([sys.executable, "-c", asked], env=environment, capture_output=True, text=True, check=True)
+    assert told.stdout.split() == ["0.25", "240"]
 
 
 def _picture() -> Picture:

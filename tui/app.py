@@ -38,7 +38,7 @@ from encircle.tui.trial_store import TrialFileError, TrialStore
 from encircle.tui.view import STEPS, Panel, View
 from encircle.tui.wording import as_declared, rounded
 
-PATIENCE = 0.08  # s: a count that takes longer is finished beside the screen
+PATIENCE = 0.1  # s: a count that takes longer is finished beside the screen
 COARSE, FINE = 10, 1  # tenths of a decibel
 WHILE_TYPING = {action.id for action in ACTIONS if action.urgent}
 WHILE_HELPING = {"help", "back", "full_size", "scroll_down", "scroll_up", "outer_loop", "inner_loop", "quit", "suspend"}

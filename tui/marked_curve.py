@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from encircle.engine.result import ComplexArray, FloatArray, LoopCurve
 
@@ -32,6 +33,6 @@ def with_points(curve: LoopCurve, frequency: FloatArray, L: ComplexArray) -> Loo
     )
 
 
-def _moved(index: int, places: FloatArray) -> int:
+def _moved(index: int, places: NDArray[np.intp]) -> int:
     """Where the boundary of a piece goes; a point put in between two pieces joins the later one."""
     return index + int(np.count_nonzero(places < index))
