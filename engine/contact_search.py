@@ -20,7 +20,9 @@ from encircle.engine.result import FloatArray
 AGREEMENT = 1e-7  # relative, between bound and middle
 PARTS = 8  # of a cell that is split
 MOST_CELLS = 40_000  # evaluated before the bounds are taken as they are
-NARROWEST = 1e-12  # cells are split down to this part of their frequency
+NARROWEST = 1e-12  # cells are split down to this part of their frequency ...
+STANDSTILL = 1e-9  # ... and the one that begins at 0 to this part of the lowest feature
+NEVER = 1e9  # a contact that comes at standstill or at infinity, and only beyond this, does not come
 FAR_RATIO = 1.6  # beyond the counted cells L is followed in such steps ...
 FAR_STEPS = 48  # ... to 6e9 times the last edge
 TAIL_RATIO = 1.05  # a narrow cell there stands for infinity
@@ -44,7 +46,10 @@ class FirstContact:
 
 @dataclass(frozen=True, slots=True)
 class BandCells:
-    """A band on the cells that a search starts from, ``lower``, ``upper`` (n,) in rad/s, at their middles, and at infinity."""
+    """A band on the cells that a search starts from, ``lower``, ``upper`` (n,) in rad/s, at their middles, at infinity.
+
+    ``standstill``: down to this frequency the cell that begins at 0 is split.
+    """
 
     lower: FloatArray
     upper: FloatArray
@@ -52,11 +57,12 @@ class BandCells:
     middles: CellSets
     tail: CellSets
     tail_upper: FloatArray
+    standstill: float
 
     def scaled(self, factor: float) -> BandCells:
         """The same for factor times L."""
         scaled = [sets.scaled(factor) for sets in (self.cells, self.middles, self.tail)]
-        return BandCells(self.lower, self.upper, *scaled, self.tail_upper)
+        return BandCells(self.lower, self.upper, *scaled, self.tail_upper, self.standstill)
 
 
 def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) -> BandCells:
@@ -68,22 +74,22 @@ def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) ->
     lower, upper, end = edges[:-1], edges[1:], edges[-1:]
     middle, tail_upper = 0.5 * (lower + upper), TAIL_RATIO * end
     cells, middles, tail = band.on_cells(lower, upper), band.on_cells(middle, middle), band.on_cells(end, tail_upper)
-    return BandCells(lower, upper, cells, middles, tail, tail_upper)
+    return BandCells(lower, upper, cells, middles, tail, tail_upper, STANDSTILL * system.lowest)
 
 
 def least_contacts(band: BandOfLoop, start: BandCells, contacts: Contacts) -> list[FirstContact]:
     """The least of each row that ``contacts(cells, upper edges)`` gives, (rows, cells), over all frequencies."""
-    return _Search(band, contacts).run(start)
+    return _Search(band, contacts, start.standstill).run(start)
 
 
 class _Search:
-    def __init__(self, band: BandOfLoop, contacts: Contacts) -> None:
-        self._band, self._contacts = band, contacts
+    def __init__(self, band: BandOfLoop, contacts: Contacts, standstill: float) -> None:
+        self._band, self._contacts, self._standstill = band, contacts, standstill
         self._least: list[FirstContact] = []
         self._evaluated = 0
 
     def run(self, start: BandCells) -> list[FirstContact]:
-        tail = self._contacts(start.tail, start.tail_upper)
+        tail = _unless_never(self._contacts(start.tail, start.tail_upper))
         self._least = [FirstContact(float(value), np.inf, np.inf) for value in tail[:, 0]]
         lower, upper = start.lower, start.upper
         bound, reached = self._contacts(start.cells, upper), self._contacts(start.middles, 0.5 * (lower + upper))
@@ -108,7 +114,7 @@ class _Search:
     ) -> tuple[FloatArray, FloatArray]:
         """Parts of the cells that may hold less than the best middle value; the bounds of the others are kept."""
         undercut = (bound < best[:, None] * (1.0 - AGREEMENT)).any(axis=0)
-        wide = upper - lower > NARROWEST * upper
+        wide = upper - lower > np.where(lower > 0.0, NARROWEST * upper, self._standstill)
         split = undercut & wide & (self._evaluated + PARTS * undercut.sum() <= MOST_CELLS)
         self._record(lower[~split], upper[~split], bound[:, ~split])
         return parts_of(lower[split], upper[split])
@@ -116,9 +122,14 @@ class _Search:
     def _record(self, lower: FloatArray, upper: FloatArray, bound: FloatArray) -> None:
         if not bound.size:
             return
+        bound = np.where(upper <= self._standstill, _unless_never(bound), bound)
         for row, place in enumerate(bound.argmin(axis=1)):
             if bound[row, place] < self._least[row].value:
                 self._least[row] = FirstContact(float(bound[row, place]), float(lower[place]), float(upper[place]))
+
+
+def _unless_never(bound: FloatArray) -> FloatArray:
+    return np.where(bound > NEVER, np.inf, bound)
 
 
 def parts_of(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
