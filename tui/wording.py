@@ -73,9 +73,9 @@ _ASCII = str.maketrans(
 )  # fmt: skip
 
 
-def rounded(value: float, direction: Direction = "nearest", digits: int = SIGNIFICANT_DIGITS) -> str:
+def rounded(value: float | Decimal, direction: Direction = "nearest", digits: int = SIGNIFICANT_DIGITS) -> str:
     """``value`` to so many significant digits, towards the safe side named by ``direction``."""
-    decimal = Decimal(repr(float(value)))
+    decimal = value if isinstance(value, Decimal) else Decimal(repr(float(value)))
     if decimal.is_zero():
         return "0"
     plain = -5 < decimal.adjusted() < 6
@@ -97,9 +97,9 @@ def rounded_towards_one(factor: float) -> str:
     return repr(factor)
 
 
-def as_declared(value: float) -> str:
+def as_declared(value: float | Decimal) -> str:
     """A number of the project file, as short as it was written there."""
-    return format(value, ".12g")
+    return format(float(value), ".12g")
 
 
 def signed(count: int) -> str:
@@ -138,16 +138,13 @@ def seconds(duration: float, direction: Direction = "down", digits: int = SIGNIF
     return f"{rounded(scaled, direction, digits)} {unit}"
 
 
-def _readable_time(duration: float) -> tuple[float, str]:
-    for factor, unit in ((1.0, "s"), (1e3, "ms"), (1e6, "µs")):
-        if duration * factor >= 1 or duration == 0:
-            return _scaled(duration, factor), unit
-    return _scaled(duration, 1e9), "ns"
-
-
-def _scaled(value: float, power_of_ten: float) -> float:
-    """``value * power_of_ten`` without the binary dust that rounding down would turn into a lost digit."""
-    return float(Decimal(repr(value)) * Decimal(power_of_ten))
+def _readable_time(duration: float) -> tuple[Decimal, str]:
+    """The time in the unit that reads best; decimal, for a product of doubles may lose the last digit."""
+    exact = Decimal(repr(float(duration)))
+    for factor, unit in ((1, "s"), (1000, "ms"), (1_000_000, "µs")):
+        if exact * factor >= 1 or exact == 0:
+            return exact * factor, unit
+    return exact * 1_000_000_000, "ns"
 
 
 def limit_required(finding: LimitFinding, frequency_unit: str) -> str:
@@ -182,7 +179,7 @@ def _digits_beside(finding: LimitFinding, words: LimitWords) -> int:
     return _MOST_DIGITS
 
 
-def _value_and_unit(value: float, words: LimitWords, frequency_unit: str) -> tuple[float, str]:
+def _value_and_unit(value: float, words: LimitWords, frequency_unit: str) -> tuple[float | Decimal, str]:
     if words.unit == "s":
         scaled, unit = _readable_time(value)
         return scaled, f" {unit}"

@@ -1,12 +1,14 @@
 """Ratios that hold on any machine, measured in one run: ``python tests/benchmarks/run.py [--json]``.
 
-Each figure is the median over seeded loops of a ratio of two medians, taken in turn so that both see the same machine.
+Each figure is the median over seeded loops of a ratio of two durations, each the best of several runs taken in turn, so
+that other work on the machine disturbs neither.
 """
 
 from __future__ import annotations
 
 import asyncio
 import json
+import math
 import os
 import statistics
 import subprocess
@@ -48,15 +50,15 @@ class Figure:
     goal: float | None
 
 
-def medians(works: Sequence[Work], repeats: int) -> list[float]:
-    """The median duration of each work in seconds, all of them run in turn."""
-    durations: list[list[float]] = [[] for _ in works]
+def best(works: Sequence[Work], repeats: int) -> list[float]:
+    """The least duration of each work in seconds, all of them run in turn."""
+    least = [math.inf] * len(works)
     for _ in range(repeats):
-        for work, found in zip(works, durations, strict=True):
+        for k, work in enumerate(works):
             start = time.perf_counter()
             work()
-            found.append(time.perf_counter() - start)
-    return [statistics.median(found) for found in durations]
+            least[k] = min(least[k], time.perf_counter() - start)
+    return least
 
 
 def figure(name: str, pairs: Sequence[tuple[float, float]], goal: float | None) -> Figure:
@@ -70,7 +72,7 @@ def counting_figures(name: str, make: Callable[[int], Cascade]) -> list[Figure]:
     cold, warm = [], []
     for seed in SEEDS:
         cascade = make(seed)
-        fresh, changed, sampled = medians(counting_works(cascade), REPEATS)
+        fresh, changed, sampled = best(counting_works(cascade), REPEATS)
         cold.append((fresh, sampled))
         warm.append((changed, sampled))
     return [
@@ -133,8 +135,8 @@ def process_figure() -> Figure:
             partial(silently, [*command, "check", str(DRIVE_FILE)], environment),
             partial(silently, [sys.executable, "-c", "import numpy"], environment),
         ]
-        medians(works, 1)  # writes the bytecode, as an installation does
-        check, numpy = medians(works, REPEATS)
+        best(works, 1)  # writes the bytecode, as an installation does
+        check, numpy = best(works, REPEATS)
     return figure("encircle check of the drive example / python -c 'import numpy'", [(check, numpy)], 3.0)
 
 
@@ -160,8 +162,8 @@ async def gain_step_figure() -> Figure:
             picture_of(project, applied(project, other), 0, lambda: False)
             computed.append(time.perf_counter() - middle)
             drawn.append(middle - start)
-    pair = (statistics.median(drawn), statistics.median(computed))
-    return figure("one gain step, every panel redrawn / the same step without drawing", [pair], None)
+    pairs = list(zip(drawn, computed, strict=True))
+    return figure("one gain step, every panel redrawn / the same step without drawing", pairs, None)
 
 
 def main() -> int:
