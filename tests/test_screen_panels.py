@@ -127,6 +127,15 @@ def test_the_tightest_limit_is_the_one_with_least_room_and_a_missed_one_comes_fi
     assert "MISSED peak |S| 6.300 dB (≤ 6 dB)" in lines[3]
 
 
+def test_the_tightest_limit_is_told_in_as_many_words_as_there_is_room_for() -> None:
+    now = picture(replace(LOOP, gain=2.0), filed=(LOOP,))
+    for width, words in ((60, "phase 71.26° (≥ 45°)  least room"), (38, "phase 71.26° (≥ 45°)"), (30, "phase 71.26°")):
+        line = texts(ladder_rows(now, width, 9))[3]
+        assert line.split("+")[0].strip() == words
+    axis = replace(LOOP, verdict="undecided", axis_poles_left=(AxisPole("rotor", 0.0), AxisPole("rotor", 3.0)))
+    assert "undecided: it leaves poles on the axis (rotor)" in texts(ladder_rows(picture(axis), 60, 9))[3]
+
+
 def test_many_loops_keep_the_chosen_one_in_sight() -> None:
     loops = tuple(replace(LOOP, name=f"loop_{number}") for number in range(12))
     rows = texts(ladder_rows(picture(*loops, chosen=9), 50, 9))

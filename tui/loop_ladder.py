@@ -12,7 +12,7 @@ from collections.abc import Sequence
 from rich.cells import cell_len
 
 from encircle.engine.result import LoopResult
-from encircle.tui.margin_names import short_finding
+from encircle.tui.margin_names import short_finding, short_found
 from encircle.tui.picture import Picture
 from encircle.tui.sheet import MINUS, Ink, Piece, Row, Run, Sheet, padded, row_width
 from encircle.tui.tightest_limit import missed_limits, tightest_limit
@@ -133,30 +133,37 @@ def gain_change(gain: float, filed: float) -> str:
 
 
 def _second_row(sheet: Sheet, picture: Picture, number: int, width: int, trial: Sequence[Piece]) -> None:
+    """The loop's tightest limit, in as many words as there is room for."""
     loop = picture.now.loops[number]
     after = loop.unstable_poles_after
     left: list[Piece] = ["    ", (strands(after, after).ljust(width), Ink.BAD)]
-    left += least_room(loop, picture.now.frequency_unit)
-    label: list[Piece] = [("  least room", Ink.QUIET)] if loop.limits and loop.verdict == "stable" else []
-    fits = row_width(sheet.runs([*left, *label, *trial])) <= sheet.width
-    sheet.split_row([*left, *(label if fits else [])], trial)
+    room = sheet.width - row_width(sheet.runs([*left, *trial]))
+    wordings = least_room(loop, picture.now.frequency_unit)
+    fitting = (words for words in wordings if row_width(sheet.runs(words)) <= room)
+    sheet.split_row([*left, *next(fitting, wordings[-1])], trial)
 
 
-def least_room(loop: LoopResult, frequency_unit: str) -> list[Run]:
-    """The tightest limit in words; missed ones first."""
+def least_room(loop: LoopResult, frequency_unit: str) -> tuple[Sequence[Run], ...]:
+    """The tightest limit in words, missed ones first; from the longest wording to the shortest."""
     if loop.verdict == "undecided":
-        return [(f"undecided: {loop.undecided[0].why}" if loop.undecided else "undecided", Ink.DOUBT)]
+        return ([(f"undecided: {_why(loop)}", Ink.DOUBT)],)
     if loop.verdict == "unstable":
-        return [("no room is left", Ink.BAD)]
+        return ([("no room is left", Ink.BAD)],)
     finding = tightest_limit(loop)
     if finding is None:
-        return [("no limits set", Ink.QUIET)]
-    words = short_finding(finding, frequency_unit)
+        return ([("no limits set", Ink.QUIET)],)
+    full, brief = short_finding(finding, frequency_unit), short_found(finding, frequency_unit)
     missed = missed_limits(loop)
     if missed:
-        return [("MISSED", Ink.ALARM), (f" {words}{_and_more(len(missed) - 1)}", Ink.BAD)]
-    return [(words, Ink.PLAIN)]
+        more = f" and {len(missed) - 1} more" if len(missed) > 1 else ""
+        return tuple([("MISSED", Ink.ALARM), (f" {words}", Ink.BAD)] for words in (full + more, full, brief))
+    plain: list[Run] = [(full, Ink.PLAIN)]
+    return [*plain, ("  least room", Ink.QUIET)], plain, [(brief, Ink.PLAIN)]
 
 
-def _and_more(others: int) -> str:
-    return f" and {others} more" if others else ""
+def _why(loop: LoopResult) -> str:
+    """The first reason why a loop is undecided."""
+    if loop.undecided:
+        return loop.undecided[0].why
+    blocks = ", ".join(dict.fromkeys(pole.block for pole in loop.axis_poles_left))
+    return f"it leaves poles on the axis ({blocks})" if blocks else "the count is not known"

@@ -31,7 +31,11 @@ def short_required(finding: LimitFinding, frequency_unit: str) -> str:
     return limit_required(finding, frequency_unit).replace("at least", "≥").replace("at most", "≤")
 
 
+def short_found(finding: LimitFinding, frequency_unit: str) -> str:
+    """``phase 71.26°``."""
+    return f"{SHORT_NAMES[finding.name]} {short_value(limit_found(finding, frequency_unit))}"
+
+
 def short_finding(finding: LimitFinding, frequency_unit: str) -> str:
     """``phase 71.26° (≥ 45°)``."""
-    found = short_value(limit_found(finding, frequency_unit))
-    return f"{SHORT_NAMES[finding.name]} {found} ({short_required(finding, frequency_unit)})"
+    return f"{short_found(finding, frequency_unit)} ({short_required(finding, frequency_unit)})"
