@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from encircle.engine.crossings import NegativeCrossing
 
 SAME = 1e-9  # candidates closer than this (relative) are one
+DIVISIONS = 16  # parts into which a range is divided to locate a change by counts
 MOST_CANDIDATES = 1000  # those nearest to 1 are kept
 
 Count = Callable[[Sequence[float]], list[int | None]]
@@ -58,14 +59,13 @@ class Reach:
 
 
 def gain_ranges(
-    crossings: Sequence[NegativeCrossing], reach: Reach, count: Count, present: int
+    crossings: Sequence[NegativeCrossing], reach: Reach, count: Count, present: int, strict: bool = True
 ) -> tuple[FactorRange, ...]:
-    """Ranges of the factor with Z in each, from 0 to infinity or to where the list may stop; ranges left open are
-    left out.
+    """Ranges of the factor with Z in each, from 0 to infinity or to where the list may stop; open ones are left out.
 
     ``count`` proves Z for several factors at once (``None``: undecided), ``present`` is Z at factor 1. With
-    infinitely many changes the list stops after the second change above 1. Raises MissedCrossingError where crossings and
-    counts disagree.
+    infinitely many changes the list stops after the second change above 1. Where crossings and counts disagree,
+    ``strict`` raises MissedCrossingError; otherwise the counts alone locate the changes.
     """
     candidates, from_zero = _candidates(crossings, reach)
     candidates, open_above = _ends(candidates, reach)
@@ -78,8 +78,10 @@ def gain_ranges(
         edges, uppers = edges[:-1], uppers[:-1]
     probes = [_probe(low.factor, up.factor if up else None) for low, up in zip(edges, uppers, strict=True)]
     counts = count(probes)
-    _check(counts, edges, probes, present)
-    return _merge(edges, uppers, counts)
+    if strict:
+        _check(counts, edges, probes, present)
+        return _merge(edges, uppers, counts)
+    return _merge(*_located(edges, uppers, probes, counts, count))
 
 
 def _candidates(crossings: Sequence[NegativeCrossing], reach: Reach) -> tuple[list[_Candidate], bool]:
@@ -132,6 +134,53 @@ def _check(
     for before, after, edge in zip(counts, counts[1:], edges[1:], strict=False):
         if before is not None and after is not None and after - before != edge.turns:
             raise MissedCrossingError(f"Z changes from {before} to {after} at the factor {edge.factor}")
+
+
+def _located(
+    edges: Sequence[_Candidate],
+    uppers: Sequence[_Candidate | None],
+    probes: Sequence[float],
+    counts: Sequence[int | None],
+    count: Count,
+) -> tuple[list[_Candidate], list[_Candidate | None], list[int | None]]:
+    """The same ranges, with the changes that a candidate does not explain located by counts between its two probes."""
+    starts, ends, found = [edges[0]], [uppers[0]], [counts[0]]
+    for i in range(1, len(edges)):
+        before, after = counts[i - 1], counts[i]
+        if before is not None and after is not None and after - before != edges[i].turns:
+            for factor, unstable in _changes(probes[i - 1], probes[i], before, count):
+                change = _Candidate(factor, edges[i].omega, unstable - (found[-1] or 0))
+                ends[-1] = change
+                starts.append(change)
+                ends.append(uppers[i])
+                found.append(unstable)
+        else:
+            starts.append(edges[i])
+            ends.append(uppers[i])
+            found.append(after)
+    return starts, ends, found
+
+
+def _changes(low: float, high: float, before: int, count: Count) -> list[tuple[float, int]]:
+    """Factors in (low, high) at which Z changes, each with the Z that follows, by repeated division in equal ratios."""
+    changes: list[tuple[float, int]] = []
+    start = low
+    while (step := _first_change(start, high, before, count)) is not None:
+        start, before = step
+        changes.append(step)
+    return changes
+
+
+def _first_change(low: float, high: float, before: int, count: Count) -> tuple[float, int] | None:
+    after: int | None = None
+    while high - low > SAME * high:
+        factors = [low * (high / low) ** (k / DIVISIONS) for k in range(1, DIVISIONS + 1)]
+        place = next((k for k, z in enumerate(count(factors)) if z is not None and z != before), None)
+        if place is None:
+            return None
+        after = count([factors[place]])[0]
+        low, high = factors[place - 1] if place else low, factors[place]
+    return None if after is None else (high, after)
 
 
 def _merge(

@@ -17,18 +17,22 @@ from encircle.engine.sampled_curve import SampledCurve, sample
 
 DENSITIES = (1, 4, 16)
 # With dead time L is followed down to these sizes until two changes of Z are found
-SMALLEST = (1e-2, 1e-4, 1e-6, 1e-9, 1e-12)
+SMALLEST = (1e-2, 1e-4, 1e-6)
 
 
 @dataclass(frozen=True, slots=True)
 class LoopStudy:
-    """What the curve of L shows: crossings and arcs, ranges of the gain factor, margins."""
+    """What the curve of L shows: crossings and arcs, ranges of the gain factor, margins.
+
+    ``complete``: the turns of the crossings sum to the proved N.
+    """
 
     curve: SampledCurve
     crossings: tuple[NegativeCrossing, ...]
     arcs: tuple[UnboundedArc, ...]
     ranges: tuple[FactorRange, ...]
     margins: Margins
+    complete: bool = True
 
 
 def sample_loop(counter: Counter, loop: OpenLoop, smallest: float = SMALLEST[0], density: int = 1) -> SampledCurve:
@@ -42,18 +46,26 @@ def study(
 ) -> LoopStudy:
     """Everything the curve shows, held against the proved counts Z = ``unstable`` and N = ``windings``.
 
-    The sampling is refined until crossings and counts agree; ArithmeticError where they never do.
+    The sampling is refined until crossings and counts agree; where they never do, the counts alone locate the changes
+    and the list of crossings is marked as incomplete.
     """
     for density in DENSITIES:
         try:
-            return _study(counter, loop, gains, unstable, windings, unit, density)
-        except MissedCrossingError as error:
-            reason = error
-    raise ArithmeticError(f"crossings and certified counts disagree: {reason}")
+            return _study(counter, loop, gains, unstable, windings, unit, density, strict=True)
+        except MissedCrossingError:
+            continue
+    return _study(counter, loop, gains, unstable, windings, unit, DENSITIES[-1], strict=False)
 
 
 def _study(
-    counter: Counter, loop: OpenLoop, gains: Gains, unstable: int, windings: int | None, unit: float, density: int
+    counter: Counter,
+    loop: OpenLoop,
+    gains: Gains,
+    unstable: int,
+    windings: int | None,
+    unit: float,
+    density: int,
+    strict: bool,
 ) -> LoopStudy:
     for smallest in SMALLEST:
         curve = sample_loop(counter, loop, smallest, density)
@@ -62,15 +74,17 @@ def _study(
         if not loop.endless or _changes_between(crossings, 1.0, complete) >= 2:
             break
     arcs = unbounded_arcs(loop, curve)
-    if windings is not None:
-        _check_windings(crossings, arcs, windings)
+    explained = windings is None or _turns(crossings, arcs) == windings
+    if strict and not explained:
+        raise MissedCrossingError(f"the crossings left of -1 do not turn {windings} times as the count says")
 
     def count(factors: Sequence[float]) -> list[int | None]:
         return counter.count_at_factors(loop.stage.part, loop.stage.loop, gains, factors)
 
     reach = Reach(*loop.infinity.factor_limits(), complete if loop.endless else None)
-    ranges = gain_ranges(crossings, reach, count, unstable)
-    return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, margins(loop, curve, ranges, unit))
+    ranges = gain_ranges(crossings, reach, count, unstable, strict)
+    found = margins(loop, curve, ranges, unit)
+    return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, found, complete=explained)
 
 
 def _complete_up_to(loop: OpenLoop, curve: SampledCurve) -> float:
@@ -83,8 +97,6 @@ def _changes_between(crossings: Sequence[NegativeCrossing], low: float, high: fl
     return sum(1 for c in crossings if c.turns != 0 and c.value < 0.0 and low < -1.0 / c.value < high)
 
 
-def _check_windings(crossings: Sequence[NegativeCrossing], arcs: Sequence[UnboundedArc], windings: int) -> None:
-    turns = sum(c.turns for c in crossings if c.value < -1.0) + sum(arc.turns for arc in arcs)
-    if turns != windings:
-        raise MissedCrossingError(f"the crossings left of -1 turn {turns} times, the count says {windings}")
-
+def _turns(crossings: Sequence[NegativeCrossing], arcs: Sequence[UnboundedArc]) -> int:
+    """Clockwise turns about -1 by all crossings left of it."""
+    return sum(c.turns for c in crossings if c.value < -1.0) + sum(arc.turns for arc in arcs)

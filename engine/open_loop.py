@@ -120,7 +120,11 @@ class OpenLoop:
         return far_end(self._leads(gains, closing=False), self._leads(gains, closing=True))
 
     def _keeps_turning(self) -> bool:
-        """Whether dead time turns L for ever at high frequency: its leading terms are delayed."""
+        """Whether dead time makes L cross the negative real axis for ever.
+
+        Its leading terms are delayed, or its asymptote is the negative real axis itself and delayed terms of lower order
+        swing L about it.
+        """
         if self.is_zero or not self.delayed:
             return False
         far = self.system.determinants[self.stage.part].far_terms
@@ -130,7 +134,9 @@ class OpenLoop:
             if self.stage.loop in term.cuts
         ]
         top = max(order for order, _ in closing)
-        return any(delay > 0 for order, delay in closing if order == top)
+        leading_delayed = any(delay > 0 for order, delay in closing if order == top)
+        end = self.infinity
+        return leading_delayed or (end.order % 2 == 0 and end.value * (-1.0) ** (end.order / 2) < 0.0)
 
     def _leads(self, gains: Gains, closing: bool) -> dict[tuple[Fraction, Fraction], Fraction]:
         """Exact leading coefficients by (order, delay); factors that are no polynomials count with their known lead."""

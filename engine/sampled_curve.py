@@ -54,7 +54,7 @@ def sample(loop: OpenLoop, hints: FloatArray, smallest: float, finer: int = 1) -
     omega = _start(loop, hints, breaks, finer, smallest)
     L, slope = loop.at(omega)
     for _ in range(MOST_ROUNDS):
-        middle = _wanted(SampledCurve(omega, L, slope, breaks), smallest if loop.delayed else 0.0, finer)
+        middle = _wanted(SampledCurve(omega, L, slope, breaks), smallest if loop.endless else 0.0, finer)
         if not len(middle) or len(omega) > MOST_POINTS:
             break
         more_L, more_slope = loop.at(middle)
@@ -91,6 +91,8 @@ def _ends(loop: OpenLoop, smallest: float) -> tuple[float, float]:
     far = loop.infinity
     if loop.endless:
         settled = (np.abs(L) < smallest) | (far.order == 0)
+    elif loop.delayed and far.value != 0.0:
+        settled = _near_asymptote(above, L, far.value, far.order) & _beyond_one(L, -far.order)
     else:
         settled = _on_asymptote(above, L, slope, far.order, far.limit) & _beyond_one(L, -far.order)
     settled |= ~np.isfinite(L)  # above the last measured line nothing is known
@@ -109,6 +111,12 @@ def _on_asymptote(
             settled &= np.abs(omega * slope / (1.0 + L)) <= 1e-3
             settled |= np.abs(L) == 0.0
     return settled
+
+
+def _near_asymptote(omega: FloatArray, L: ComplexArray, value: float, order: float) -> np.ndarray:
+    """L is within a third of value * (j omega)^order, so delayed terms of lower order no longer turn it across an axis."""
+    with np.errstate(all="ignore"):
+        return np.abs(L / (value * (1j * omega) ** order) - 1.0) < 0.3
 
 
 def _beyond_one(L: ComplexArray, order: float) -> np.ndarray:
