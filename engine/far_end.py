@@ -19,10 +19,7 @@ Leads = Mapping[tuple[Fraction, Fraction], Fraction]
 
 @dataclass(frozen=True, slots=True)
 class FarEnd:
-    """``order`` of L in s; ``prompt`` = (a_0, b_0); ``delayed`` = ((a_i, b_i), ...), one pair for each dead time.
-
-    ``delayed`` is empty unless the order is 0.
-    """
+    """``order`` of L in s; ``prompt`` = (a_0, b_0); ``delayed`` = ((a_i, b_i), ...), one pair for each dead time."""
 
     order: float
     prompt: tuple[Fraction, Fraction]
@@ -38,6 +35,19 @@ class FarEnd:
     def limit(self) -> float | None:
         """The finite real limit of L, if there is one."""
         return self.value if self.order == 0 and not self.delayed and self.prompt[0] else None
+
+    def spread(self) -> float:
+        """Bound of |L/(value s^order) - 1| in the limit: how far delayed terms of the leading power swing L."""
+        a, b = (self._loose(i) / abs(self.prompt[i]) if self.prompt[i] else Fraction(1) for i in (0, 1))
+        return float((a + b) / (1 - a)) if a < 1 and b < 1 else np.inf
+
+    def reaches_negative_axis(self) -> bool:
+        """Whether the delayed terms of the leading power can swing L across the negative real axis for ever."""
+        if self.spread() == np.inf:
+            return True
+        swing = sum(np.arcsin(float(self._loose(i) / abs(self.prompt[i]))) for i in (0, 1))
+        direction = np.angle(np.sign(self.value) * np.exp(0.5j * np.pi * self.order))
+        return bool(np.pi - abs(direction) <= swing + 1e-9)
 
     def largest_size(self) -> float:
         """lim sup |L|, or a bound above it."""
@@ -98,7 +108,7 @@ def far_end(A: Leads, B: Leads) -> FarEnd:
     top_B = {delay: value for (order, delay), value in B.items() if order == order_B}
     zero = Fraction(0)
     prompt = top_A.get(zero, zero), top_B.get(zero, zero)
-    delays = sorted({delay for delay in (*top_A, *top_B) if delay > 0}) if order_A == order_B else []
+    delays = sorted({delay for delay in (*top_A, *top_B) if delay > 0})
     return FarEnd(
         float(order_B - order_A), prompt, tuple((top_A.get(d, zero), top_B.get(d, zero)) for d in delays)
     )

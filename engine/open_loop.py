@@ -122,21 +122,10 @@ class OpenLoop:
     def _keeps_turning(self) -> bool:
         """Whether dead time makes L cross the negative real axis for ever.
 
-        Its leading terms are delayed, or its asymptote is the negative real axis itself and delayed terms of lower order
-        swing L about it.
+        Delayed terms of its leading power swing it so far, or its asymptote is the negative real axis itself and delayed
+        terms of lower order swing L about it.
         """
-        if self.is_zero or not self.delayed:
-            return False
-        far = self.system.determinants[self.stage.part].far_terms
-        closing = [
-            (order, term.delay)
-            for term, (_, order) in zip(far, self._leads_of_terms, strict=True)
-            if self.stage.loop in term.cuts
-        ]
-        top = max(order for order, _ in closing)
-        leading_delayed = any(delay > 0 for order, delay in closing if order == top)
-        end = self.infinity
-        return leading_delayed or (end.order % 2 == 0 and end.value * (-1.0) ** (end.order / 2) < 0.0)
+        return not self.is_zero and self.delayed and self.infinity.reaches_negative_axis()
 
     def _leads(self, gains: Gains, closing: bool) -> dict[tuple[Fraction, Fraction], Fraction]:
         """Exact leading coefficients by (order, delay); factors that are no polynomials count with their known lead."""

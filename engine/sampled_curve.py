@@ -12,6 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from encircle.engine.far_end import FarEnd
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.result import ComplexArray, FloatArray
 
@@ -92,7 +93,7 @@ def _ends(loop: OpenLoop, smallest: float) -> tuple[float, float]:
     if loop.endless:
         settled = (np.abs(L) < smallest) | (far.order == 0)
     elif loop.delayed and far.value != 0.0:
-        settled = _near_asymptote(above, L, far.value, far.order) & _beyond_one(L, -far.order)
+        settled = _near_asymptote(above, L, far) & _beyond_one(L, -far.order)
     else:
         settled = _on_asymptote(above, L, slope, far.order, far.limit) & _beyond_one(L, -far.order)
     settled |= ~np.isfinite(L)  # above the last measured line nothing is known
@@ -113,10 +114,10 @@ def _on_asymptote(
     return settled
 
 
-def _near_asymptote(omega: FloatArray, L: ComplexArray, value: float, order: float) -> np.ndarray:
-    """L is within a third of value * (j omega)^order, so delayed terms of lower order no longer turn it across an axis."""
+def _near_asymptote(omega: FloatArray, L: ComplexArray, far: FarEnd) -> np.ndarray:
+    """L is within reach of value * (j omega)^order: delayed terms of lower order no longer turn it across an axis."""
     with np.errstate(all="ignore"):
-        return np.abs(L / (value * (1j * omega) ** order) - 1.0) < 0.3
+        return np.abs(L / (far.value * (1j * omega) ** far.order) - 1.0) < 0.3 + far.spread()
 
 
 def _beyond_one(L: ComplexArray, order: float) -> np.ndarray:
