@@ -16,14 +16,15 @@ from encircle.engine.factored_formula import (
     Product,
     Sum,
     factored_formula,
+    shifted_power,
+    times_power_of_s,
 )
-from encircle.engine.formula_at_infinity import FarField
+from encircle.engine.formula_at_infinity import growth_of
 from encircle.engine.formula_on_cells import QUARTER_TURN, Ray
-from encircle.engine.growth import Growth, unknown
-from encircle.engine.real_interval import RealInterval
+from encircle.engine.growth import Growth
 from encircle.engine.result import ComplexArray, FloatArray
 from encircle.engine.rounding import check_elementary_functions
-from encircle.engine.taylor_model import BoolArray, IntArray, TaylorModel, exponents, multiply
+from encircle.engine.taylor_model import BoolArray, IntArray, TaylorModel, exponents
 
 Enclosure = tuple[ComplexArray, ComplexArray, ComplexArray, FloatArray, IntArray]
 
@@ -46,41 +47,23 @@ class Composed:
         except (ValueError, ZeroDivisionError, OverflowError) as error:
             raise ProjectError(Problem("formula-constant", f"blocks.{block.name}.formula", f"{error}")) from None
         self.power_at_zero: Fraction = self.formula.order
+        self.regular = times_power_of_s(self.formula, -self.power_at_zero)
 
     def on_cells(self, centre: FloatArray, half: FloatArray) -> Enclosure:
-        """H on the cells s = j(centre + half t), |t| <= 1; centre >= half >= 0, (n,), rad/s.
-
-        Returns v, d, e (complex), r (real, inf where nothing is proved) and integer exponents, all (n,): H lies in
-        2^exponent (v + d t + e t^2 + Disc(0, r)).
-        """
-        with np.errstate(all="ignore"):
-            return _finished(Ray(centre, half).full(self.formula))
+        """H on cells; see ``product_on_cells``."""
+        return product_on_cells(self.formula, centre, half)
 
     def regular_on_cells(self, centre: FloatArray, half: FloatArray) -> Enclosure:
-        """H/s^power_at_zero on the cells, as ``on_cells``."""
-        with np.errstate(all="ignore"):
-            return _finished(Ray(centre, half).regular(self.formula))
+        """H/s^power_at_zero on cells; see ``product_on_cells``."""
+        return product_on_cells(self.regular, centre, half)
 
     def at_points(self, omega: FloatArray) -> ComplexArray:
         """Plain values of H(j omega), principal branch; the limit from Re s > 0 where the axis is a cut."""
-        return self.values_and_slopes(omega)[0]
-
-    def values_and_slopes(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
-        """H(j omega) and its derivative with respect to omega, per rad/s, both (n,) complex."""
-        return _values_and_slopes(self.formula, omega, self.power_at_zero)
-
-    def regular_values_and_slopes(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
-        """H/s^power_at_zero at s = j omega and its derivative with respect to omega."""
-        return _values_and_slopes(self.formula, omega, Fraction(0))
+        return values_and_slopes(self.formula, omega)[0]
 
     def at_infinity(self, radius: float | FloatArray) -> Growth:
         """H on |s| >= R, Re s >= 0, for one R or an array of them (rad/s)."""
-        radii = np.atleast_1d(np.asarray(radius, dtype=float))
-        with np.errstate(all="ignore"):
-            try:
-                return FarField(radii).product(self.formula).bounded()
-            except OverflowError:  # a coefficient of the expansion leaves double precision
-                return unknown(radii)
+        return growth_of(self.formula, np.atleast_1d(np.asarray(radius, dtype=float)))
 
     @cached_property
     def features(self) -> tuple[float, ...]:
@@ -89,15 +72,20 @@ class Composed:
             return _features(self.formula)
 
 
-def power_on_cells(alpha: float, a: float, centre: FloatArray, half: FloatArray) -> Enclosure:
-    """(s/(s + a))^alpha, a > 0, alpha > 0, on the cells, as ``Composed.on_cells``; also on one that touches 0."""
-    one, exponent = RealInterval.exact(1), Fraction(alpha)
-    terms = (Product(one, Fraction(1), ()), Product(RealInterval.exact(Fraction(a)), Fraction(0), ()))
-    base = Product(one, Fraction(0), ((Sum(terms, Fraction(0)), Fraction(1)),))
+def product_on_cells(product: Product, centre: FloatArray, half: FloatArray) -> Enclosure:
+    """A factored formula on the cells s = j(centre + half t), |t| <= 1; centre >= half >= 0, (n,), rad/s.
+
+    Returns v, d, e (complex), r (real, inf where nothing is proved) and integer exponents, all (n,): the values lie in
+    2^exponent (v + d t + e t^2 + Disc(0, r)).
+    """
     with np.errstate(all="ignore"):
-        ray = Ray(centre, half)
-        below = ray.regular_factor(PrincipalPower(base, -exponent, Fraction(0)))
-        return _finished(multiply(ray.power(exponent), below))
+        return _finished(Ray(centre, half).full(product))
+
+
+def power_on_cells(alpha: float, a: float, centre: FloatArray, half: FloatArray) -> Enclosure:
+    """(s/(s + a))^alpha, a > 0, alpha > 0, on the cells; also on one that touches 0. See ``product_on_cells``."""
+    exponent = Fraction(alpha)
+    return product_on_cells(times_power_of_s(shifted_power(Fraction(a), -exponent), exponent), centre, half)
 
 
 def _finished(model: TaylorModel) -> Enclosure:
@@ -110,23 +98,21 @@ def _finished(model: TaylorModel) -> Enclosure:
     return v, d, e, np.where(sound, model.r, np.inf), exponents(model)
 
 
-def _values_and_slopes(product: Product, omega: FloatArray, power: Fraction) -> tuple[ComplexArray, ComplexArray]:
-    """s^power times the regular part of the product, and its derivative, at points."""
+def values_and_slopes(product: Product, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+    """Plain values at s = j omega (rad/s), as ``Composed.at_points``, and derivatives by omega, both (n,) complex."""
     omega = np.asarray(omega, dtype=float)
     with np.errstate(all="ignore"):
-        v, slope, unsure = _on_ray(product, omega, power, QUARTER_TURN)
+        v, slope, unsure = _on_ray(product, omega, QUARTER_TURN)
         if unsure.any():
-            beside = _on_ray(product, omega[unsure], power, QUARTER_TURN - BESIDE_THE_CUT)
+            beside = _on_ray(product, omega[unsure], QUARTER_TURN - BESIDE_THE_CUT)
             v[unsure], slope[unsure] = beside[0], beside[1]
     return v, slope
 
 
-def _on_ray(
-    product: Product, omega: FloatArray, power: Fraction, angle: float
-) -> tuple[ComplexArray, ComplexArray, BoolArray]:
+def _on_ray(product: Product, omega: FloatArray, angle: float) -> tuple[ComplexArray, ComplexArray, BoolArray]:
     """Value, derivative (the linear coefficient of narrow cells), and where the enclosure proves nothing."""
     ray = Ray(omega, 1e-9 * omega, angle)
-    model = ray.times_power(product, power)
+    model = ray.full(product)
     size = np.ldexp(1.0, exponents(model))
     return model.v * size, model.d * size / ray.half, ~np.isfinite(model.r)
 

@@ -90,6 +90,21 @@ def number(value: RealInterval) -> Product:
 ONE = number(RealInterval.exact(1))
 
 
+def times_power_of_s(product: Product, power: Fraction) -> Product:
+    """s^power times the product."""
+    return product.times_power(RealInterval.exact(1), power)
+
+
+def shifted_power(a: Fraction, n: Fraction) -> Product:
+    """(s + a)^n, a > 0, principal branch for fractional n."""
+    shifted = Sum((S, number(RealInterval.exact(a))), Fraction(0))
+    if n.denominator == 1:
+        return Product(RealInterval.exact(1), Fraction(0), ((shifted, n),) if n else ())
+    base = Product(RealInterval.exact(1), Fraction(0), ((shifted, Fraction(1)),))
+    root = PrincipalPower(base, n, Fraction(0))
+    return Product(RealInterval.exact(1), Fraction(0), ((root, Fraction(1)),))
+
+
 def factored_formula(expression: Expression, parameters: Mapping[str, Fraction]) -> Product:
     """The formula as a product; ``parameters`` gives every name in it but ``s`` and ``pi``.
 

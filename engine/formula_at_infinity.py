@@ -4,12 +4,23 @@ from __future__ import annotations
 
 from fractions import Fraction
 
+import numpy as np
+
 from encircle.engine.factored_formula import Analytic, Factor, Function, PrincipalPower, Product, Sum
 from encircle.engine.growth import Exponential, Growth, exponential, off_negative_axis, plain, single_term, unknown
 from encircle.engine.real_interval import RealInterval
 from encircle.engine.result import FloatArray
 
 HALF = Fraction(1, 2)
+
+
+def growth_of(product: Product, radius: FloatArray) -> Growth:
+    """A factored formula on |s| >= R, Re s >= 0, for each R of ``radius`` (m,), rad/s."""
+    with np.errstate(all="ignore"):
+        try:
+            return FarField(radius).product(product).bounded()
+        except OverflowError:  # a coefficient of the expansion leaves double precision
+            return unknown(radius)
 
 
 class FarField:

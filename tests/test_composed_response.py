@@ -1,4 +1,4 @@
-"""Irrational formulas on cells: containment against 40-digit arithmetic, width, behaviour at 0, cuts, published counts."""
+"""Irrational formulas on cells: containment in 40-digit arithmetic, width, cells at 0, cuts, published counts."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ from enclosure_checks import DIGITS, ratios
 from exact_formula import exact_value, formula_block
 
 from encircle.engine import hyperbolic, rounding, taylor_model
-from encircle.engine.composed_response import Composed, Enclosure, power_on_cells
+from encircle.engine.composed_response import Composed, Enclosure, power_on_cells, values_and_slopes
 from encircle.engine.errors import ProjectError
 from encircle.engine.taylor_model import TaylorModel, distance_from_zero_lower
 
@@ -148,7 +148,7 @@ def test_plain_values_and_slopes(text: str, power: Fraction, highest: float) -> 
     omega = np.logspace(-5, math.log10(highest), 25)
     H = composed(text)
     block = formula_block(text, **PARAMETERS)
-    values, slopes = H.values_and_slopes(omega)
+    values, slopes = values_and_slopes(H.formula, omega)
     with mpmath.workdps(DIGITS):
         for w, value, slope in zip(omega, values, slopes, strict=True):
             s, step = mpmath.mpc(0, mpmath.mpf(float(w))), mpmath.mpf(float(w)) * mpmath.mpf(10) ** -12
