@@ -8,7 +8,6 @@ from exact_diagram import ExactDiagram, LoopCounts
 from single_loop_files import assert_consistent
 
 from encircle.engine import Project
-from encircle.engine.declarations import Declarations
 from encircle.engine.result import LoopResult
 
 
@@ -25,10 +24,9 @@ class Tally:
 
 
 def compare_with_exact_counts(
-    declarations: Declarations, exact: ExactDiagram, number: int, tally: Tally, *, every_loop: bool = True
+    project: Project, exact: ExactDiagram, number: int, tally: Tally, *, every_loop: bool = True
 ) -> None:
     """Compare the whole diagram, all loops open and all closed, and P, N and Z of every loop if asked to."""
-    project = Project(declarations)
     names = project.loop_names if every_loop else ()
     result = project.check(names)
     for index, loop in enumerate(result.loops):

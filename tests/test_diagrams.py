@@ -5,6 +5,7 @@ from __future__ import annotations
 from fractions import Fraction
 
 import numpy as np
+import pytest
 from exact_delay import DelayTerm, zeros_right_of_axis
 from exact_diagram import ExactDiagram
 from exact_roots import polynomial, rational
@@ -24,6 +25,7 @@ from single_loop_files import assert_consistent
 
 from encircle.engine import Project
 from encircle.engine.declarations import Declarations
+from encircle.engine.result import LoopResult
 
 DIAGRAMS = 200
 
@@ -40,71 +42,76 @@ def usable_diagrams(seed: int, count: int) -> list[tuple[Declarations, ExactDiag
     return found
 
 
-DIAGRAM_CORPUS = usable_diagrams(1953, DIAGRAMS)
+@pytest.fixture(scope="module")
+def diagrams() -> list[tuple[Project, ExactDiagram]]:
+    """The corpus, compiled once for all tests."""
+    return [(Project(declarations), exact) for declarations, exact in usable_diagrams(1953, DIAGRAMS)]
 
 
-def test_counts_of_general_diagrams() -> None:
+Diagrams = list[tuple[Project, ExactDiagram]]
+
+
+def test_counts_of_general_diagrams(diagrams: Diagrams) -> None:
     tally = Tally()
-    for number, (declarations, exact) in enumerate(DIAGRAM_CORPUS):
-        compare_with_exact_counts(declarations, exact, number, tally)
+    for number, (project, exact) in enumerate(diagrams):
+        compare_with_exact_counts(project, exact, number, tally)
     assert tally.wrong == []
     assert tally.needlessly_undecided == []
     assert tally.stable > DIAGRAMS / 10
     assert tally.unstable > DIAGRAMS / 10
 
 
-def test_parts_name_their_blocks() -> None:
+def test_parts_name_their_blocks(diagrams: Diagrams) -> None:
     """The blocks of a loop's part: its copies, found here by plain reachability."""
-    for declarations, exact in DIAGRAM_CORPUS[:60]:
-        project = Project(declarations)
+    for project, exact in diagrams:
         for index, name in enumerate(project.loop_names):
             assert set(project.loop(name).blocks) == {exact.owners[copy] for copy in exact.part(index)}
 
 
-def test_gain_ranges_hold_the_exact_count() -> None:
-    """At random gains inside the printed ranges the exact count is the printed one; just past a limit it is another."""
+def test_gain_ranges_hold_the_exact_count(diagrams: Diagrams) -> None:
+    """At random gains inside the printed ranges the exact count is the printed one."""
     rng = np.random.default_rng(1960)
     checked = 0
-    for declarations, _ in DIAGRAM_CORPUS[:80]:
-        project = Project(declarations)
-        last = len(project.loop_names) - 1
-        ranges = project.loop(project.loop_names[last]).gain_ranges
-        for item in ranges:
+    for project, _ in diagrams[:80]:
+        for item in last_loop(project).gain_ranges:
             upper = 100 * max(item.lower, 1.0) if item.upper is None else item.upper
             for share in rng.uniform(0.001, 0.999, 2):
                 factor = item.lower + share * (upper - item.lower)
-                assert exact_count_at(declarations, last, factor) == item.unstable_poles
+                assert exact_count_at(project, factor) == item.unstable_poles
                 checked += 1
     assert checked > 150
 
 
-def test_gain_margins_end_where_the_exact_count_changes() -> None:
+def test_gain_margins_end_where_the_exact_count_changes(diagrams: Diagrams) -> None:
     checked = 0
-    for declarations, _ in DIAGRAM_CORPUS[:120]:
-        project = Project(declarations)
-        last = len(project.loop_names) - 1
-        margins = project.loop(project.loop_names[last]).margins
+    for project, _ in diagrams:
+        margins = last_loop(project).margins
         if margins is None:
             continue
         for side, direction in ((margins.gain_increase, 1), (margins.gain_decrease, -1)):
             if side is not None:
                 inside, outside = side.factor * (1 - 1e-6 * direction), side.factor * (1 + 1e-6 * direction)
-                assert exact_count_at(declarations, last, inside) == 0
-                assert exact_count_at(declarations, last, outside) > 0
+                assert exact_count_at(project, inside) == 0
+                assert exact_count_at(project, outside) > 0
                 checked += 1
     assert checked > 20
 
 
-def exact_count_at(declarations: Declarations, index: int, factor: float) -> int:
-    cut = declarations.loops[index].cut
-    gain = declarations.loops[index].gain * factor
-    return ExactDiagram(declarations, {cut: gain}).loop(index).after.right
+def last_loop(project: Project) -> LoopResult:
+    return project.loop(project.loop_names[-1])
 
 
-def test_state_space_eigenvalues_agree_with_the_exact_counts() -> None:
+def exact_count_at(project: Project, factor: float) -> int:
+    """Z of the last loop with its gain times ``factor``."""
+    declared_loop = project.declarations.loops[-1]
+    exact = ExactDiagram(project.declarations, {declared_loop.cut: declared_loop.gain * factor})
+    return exact.loop(len(project.loop_names) - 1).after.right
+
+
+def test_eigenvalues_agree_with_the_exact_counts(diagrams: Diagrams) -> None:
     """The oracle itself, against numpy: eigenvalues of the companion matrix of each whole diagram."""
-    for _, exact in DIAGRAM_CORPUS:
-        closed = len(exact.declarations.loops)
+    for project, exact in diagrams:
+        closed = len(project.loop_names)
         values = [float(c.p) / float(c.q) for c in exact.characteristic(closed).coeffs()][::-1]
         roots = np.roots(values)
         clear = np.abs(roots.real) > 1e-4 * (1 + np.abs(roots))

@@ -8,6 +8,7 @@ from exact_diagram import ExactDiagram
 from random_projects import random_cascade, random_single_loop
 from random_verdicts import Tally, compare_with_exact_counts
 
+from encircle.engine import Project
 from encircle.engine.declarations import Declarations
 
 BATCH = 250
@@ -24,7 +25,7 @@ def run(declarations: list[Declarations], in_full: int) -> Tally:
     """Count every diagram all open and all closed; look at each loop of every ``in_full``-th in full."""
     tally = Tally()
     for number, each in enumerate(declarations):
-        compare_with_exact_counts(each, ExactDiagram(each), number, tally, every_loop=number % in_full == 0)
+        compare_with_exact_counts(Project(each), ExactDiagram(each), number, tally, every_loop=number % in_full == 0)
     assert tally.wrong == []
     assert tally.needlessly_undecided == []
     assert tally.stable > BATCH / 10
