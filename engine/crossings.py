@@ -48,7 +48,8 @@ def roots_of(loop: OpenLoop, curve: SampledCurve, score: Score) -> FloatArray:
     at = np.flatnonzero(change)
 
     def at_frequency(omega: FloatArray) -> FloatArray:
-        return score(*loop.at(omega))
+        with np.errstate(all="ignore"):  # L may underflow to 0 where it decays exponentially
+            return score(*loop.at(omega))
 
     return bracketed_roots(at_frequency, curve.omega[at], curve.omega[at + 1])
 

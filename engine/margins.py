@@ -106,7 +106,9 @@ def _largest_complementary(loop: OpenLoop, curve: SampledCurve) -> tuple[float, 
     """The largest |L/(1 + L)| and its frequency in rad/s: inside, at 0, at a pole of L on the axis or at infinity."""
     omega = roots_of(loop, curve, lambda L, slope: (slope / (L * (1.0 + L))).real)
     L, _ = loop.at(omega)
-    found = list(zip(np.abs(L / (1.0 + L)).tolist(), (-omega).tolist(), strict=True))
+    with np.errstate(all="ignore"):
+        sizes = np.abs(L / (1.0 + L))
+    found = [(float(size), -float(w)) for size, w in zip(sizes, omega, strict=True) if np.isfinite(size)]
     found += [(1.0, -pole.omega) for pole in loop.poles if pole.omega > 0.0]
     near = loop.zero
     if near.order <= 0:

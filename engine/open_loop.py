@@ -20,6 +20,7 @@ from encircle.engine.loop_determinant import Term
 from encircle.engine.result import ComplexArray, FloatArray
 
 NEAR_ZERO = 1e-9  # where a limit at 0 is taken numerically: this part of the lowest feature
+DEEP_ZERO = 1e-32  # the same for irrational formulas, which approach their limit as slowly as a root of s
 
 
 @dataclass(frozen=True, slots=True)
@@ -108,9 +109,12 @@ class OpenLoop:
         return NearEnd(B / A, float(lowest_B - lowest_A))
 
     def _numerical_end(self) -> NearEnd:
-        tiny = NEAR_ZERO * self.system.lowest
+        """By value and slope far below all features; powers of s are multiples of 1/64 for all practical formulas."""
+        tiny = DEEP_ZERO * self.system.lowest
         L, slope = self.at(np.array([tiny]))
-        order = round(float((tiny * slope[0] / L[0]).real) * 64.0) / 64.0
+        found = float((tiny * slope[0] / L[0]).real)
+        rounded = round(found * 64.0) / 64.0
+        order = rounded if abs(found - rounded) < 1e-6 else found
         return NearEnd(float((L[0] / (1j * tiny) ** order).real), order)
 
     def _at_infinity(self, gains: Gains) -> FarEnd:
