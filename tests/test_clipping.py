@@ -44,6 +44,8 @@ def test_what_is_left_is_the_part_inside(a: tuple[float, float], b: tuple[float,
     low_y, high_y = sorted((segments.y0[0], segments.y1[0]))
     covered = (x >= low_x - 1e-9) & (x <= high_x + 1e-9) & (y >= low_y - 1e-9) & (y <= high_y + 1e-9)
     assert (covered | ~inside).all()
+    for end in ((segments.x0[0], segments.y0[0]), (segments.x1[0], segments.y1[0])):
+        assert distance_to_course(np.array(end), np.stack(WINDOW.fractions(*line([a, b])), axis=1)) < 1e-9
 
 
 def test_a_crossing_of_the_edge_is_where_the_line_meets_it() -> None:
@@ -68,6 +70,15 @@ def test_a_far_end_keeps_its_direction() -> None:
     """(1e300, 1e300) lies on the diagonal, which leaves this window through its corner."""
     segments = clip(*line([(0, 0), (1e300, 1e300)]), Window(-1, 1, -1, 1))
     assert (segments.x1[0], segments.y1[0]) == pytest.approx((1, 1), abs=1e-6)
+
+
+@pytest.mark.parametrize("far", [1e12, 1e100, 1.7e308])
+def test_the_near_end_of_a_far_segment_stays_in_place(far: float) -> None:
+    """A difference of such numbers forgets the near end altogether."""
+    for ends in ([(far, -far), (0.5, 0.25)], [(0.5, 0.25), (-far, 0.1 * far)]):
+        segments = clip(*line(ends), Window(-1, 1, -1, 1))
+        found = np.array([(segments.x0[0], segments.y0[0]), (segments.x1[0], segments.y1[0])])
+        assert np.abs(found - (0.75, 0.625)).max(axis=1).min() < 1e-6
 
 
 def test_a_point_alone_is_seen() -> None:
