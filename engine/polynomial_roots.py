@@ -123,7 +123,7 @@ def _iterate(coefficients: Sequence[int], start: ComplexArray) -> ComplexArray:
     for _ in range(_ITERATIONS):
         ratio, value_bits, slope_bits = _logarithmic_derivatives(coefficients, high[active], low[active], bits)
         with np.errstate(all="ignore"):
-            step = -1 / (ratio - _repulsion(high, low, active))
+            step = -1 / (ratio - _repulsion(high, active))
             distance = 1 / np.abs(ratio) / np.abs(high[active])
         near = distance < _SETTLED
         if (slope_bits[near] < _SLOPE_BITS).any() or (value_bits[~near] < _VALUE_BITS).any():
@@ -140,9 +140,9 @@ def _iterate(coefficients: Sequence[int], start: ComplexArray) -> ComplexArray:
     raise ArithmeticError(f"the roots of a polynomial of degree {len(start)} did not settle")
 
 
-def _repulsion(high: ComplexArray, low: ComplexArray, active: NDArray[np.int64]) -> ComplexArray:
-    """sum over k of 1/(z_i - z_k) for the active i; the differences keep the accuracy of the pairs of doubles."""
-    difference = (high[active, None] - high) + (low[active, None] - low)
+def _repulsion(high: ComplexArray, active: NDArray[np.int64]) -> ComplexArray:
+    """sum over k of 1/(z_i - z_k) for the active i, without those that equal z_i in double precision."""
+    difference = high[active, None] - high
     difference[difference == 0] = np.inf
     return np.asarray((1 / difference).sum(axis=1))
 

@@ -17,7 +17,7 @@ Row = list[tuple[Decimal, Decimal]]  # (value, bound on its error)
 _ZERO = Decimal(0)
 _ALMOST_ONE = Decimal("0.999999")
 _UPWARD = Context(prec=9, rounding=ROUND_CEILING, Emax=MAX_EMAX, Emin=MIN_EMIN)
-_DIGITS = (32, 128, 512)
+_DIGITS = (32, 128, 512, 2048, 8192)
 
 
 def right_half_plane_roots(coefficients: Sequence[int]) -> int:
@@ -82,7 +82,7 @@ def _changes(signs: Sequence[bool]) -> int:
 def _sign_changes(coefficients: Sequence[int], digits: int) -> int | None:
     """Sign changes down the first column of the array; None where a sign is uncertain."""
     context = Context(prec=digits, rounding=ROUND_HALF_EVEN, Emax=MAX_EMAX, Emin=MIN_EMIN)
-    unit = Decimal(1).scaleb(1 - digits)
+    unit = Decimal(5).scaleb(-digits)  # half a unit in the last place
     descending = [_rounded(c, context, unit) for c in reversed(coefficients)]
     above, row = descending[::2], descending[1::2]
     signs = [above[0][0].is_signed()]

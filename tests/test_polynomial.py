@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from decimal import Context, Decimal
 from fractions import Fraction
 from math import prod
 
@@ -223,9 +224,43 @@ class TestCountRight:
             coefficients = [*map(int, rng.integers(10, 1000, degree)), 1]
             assert routh._by_remainders(coefficients) == routh._sign_changes(coefficients, 50)
 
+    @pytest.mark.parametrize("spread", [(0.0, 0.0), (1e-4, 0.0), (0.0, 1e-4), (1e-4, 1e-4)])
+    def test_bounds_hold_in_the_array_and_are_not_idle(self, spread: tuple[float, float]) -> None:
+        """A row in 6 digits from two rows known to within ``spread``, against exact fractions at the ends of it."""
+        rng, closest = np.random.default_rng(11), 0.0
+        context, unit = Context(prec=6), Decimal("5e-6")
+        for _ in range(200):
+            rows, exact = zip(*(_uncertain_row(rng, size) for size in spread), strict=True)
+            found = routh._next_row(rows[0], rows[1], context, unit)
+            for (value, bound), true in zip(found, _exact_row(*exact), strict=True):
+                assert abs(Fraction(value) - true) <= Fraction(bound)
+                closest = max(closest, float(abs(Fraction(value) - true) / Fraction(bound)))
+        assert closest > 0.3
+
+    def test_a_sign_within_its_bound_is_no_sign(self) -> None:
+        """1 + 1e-40 needs more than 32 digits to differ from 1."""
+        close = [10**40, 10**40 + 1, 10**40, 10**40]
+        assert routh._sign_changes(close, 32) is None
+        assert routh._sign_changes(close, 128) == 0
+        assert routh.right_half_plane_roots(close) == 0
+
     def test_pairs_are_not_counted_by_the_array(self) -> None:
         with pytest.raises(ValueError, match="no regular Routh array"):
             routh.right_half_plane_roots([1, 0, 1])
+
+
+def _uncertain_row(rng: np.random.Generator, size: float) -> tuple[routh.Row, list[Fraction]]:
+    """Entries near 1 with bounds, and true values at an end of each: neighbours nearly cancel in the next row."""
+    values = [Decimal(int(c)).scaleb(-5) for c in rng.integers(99_000, 101_000, 3)]
+    bounds = [abs(value) * Decimal(repr(size)) for value in values]
+    signs = rng.choice([-1, 1], 3).tolist()
+    true = [Fraction(v) + sign * Fraction(b) for v, b, sign in zip(values, bounds, signs, strict=True)]
+    return list(zip(values, bounds, strict=True)), true
+
+
+def _exact_row(above: list[Fraction], row: list[Fraction]) -> list[Fraction]:
+    padded = [*row[1:], Fraction(0)]
+    return [c - above[0] / row[0] * d for c, d in zip(above[1:], padded, strict=False)]
 
 
 def componentwise_error(p: Polynomial, roots: np.ndarray) -> float:
@@ -278,6 +313,16 @@ class TestRoots:
         assert np.allclose(p.roots().real, [-1 + 1e-12, -1, -1 - 1e-12, -2], rtol=2e-16, atol=0)
         complex_pair = from_roots([Fraction(-1)], [(Fraction(-1), gap)])
         assert sorted(complex_pair.roots().imag) == [-1e-12, 0.0, 1e-12]
+        very_close = from_roots([Fraction(-2)], [(Fraction(-1), Fraction(1, 10**20))])
+        assert sorted(very_close.roots().imag) == pytest.approx([-1e-20, 0.0, 1e-20], rel=1e-6, abs=0)
+
+    def test_a_group_that_needs_more_bits(self) -> None:
+        """Five roots 1e-9 apart: near them p is 1e-45 of its terms."""
+        roots = [-1 - Fraction(k, 10**9) for k in range(5)]
+        assert from_roots(roots, []).roots().tolist() == [float(root) for root in roots]
+        start = np.array([float(root) * (1 + 1e-14) for root in roots], complex)
+        found = polynomial_roots._iterate(from_roots(roots, []).integers(), start)
+        assert found.real.tolist() == [float(root) for root in roots]
 
     def test_roots_nearer_than_doubles_can_tell(self) -> None:
         gap = Fraction(1, 10**45)
