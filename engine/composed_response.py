@@ -126,8 +126,11 @@ def _features(formula: Product) -> tuple[float, ...]:
             terms = (ray.times_power(term, term.order) for term in factor.terms)
             found.update(_takeovers(np.array([_logarithm(term) for term in terms])))
         elif isinstance(factor, Function):
-            size = _logarithm(ray.full(factor.argument))
-            found.update(_takeovers(np.array([size, 0.0 * size])))
+            argument = ray.full(factor.argument)
+            known = argument.r < 0.1 * np.abs(argument.v)  # else rounding alone would look like a feature
+            size = np.where(known, _logarithm(argument), -np.inf)
+            size = np.where(np.isfinite(size), size, size[known][-1] if known.any() else -1.0)
+            found.update(_takeovers(np.array([size, np.zeros_like(size)])))
     return tuple(sorted(found))
 
 
@@ -149,18 +152,20 @@ def _inside(factor: PrincipalPower | Function) -> Product:
 
 
 def _logarithm(model: TaylorModel) -> FloatArray:
-    """log2 of the size of each cell, -inf where nothing is proved."""
-    size = np.log2(np.abs(model.v) + model.r) + exponents(model)
-    return np.where(np.isfinite(size), size, -np.inf)
+    """log2 of the size of each cell, NaN where the enclosure does not tell it."""
+    size = np.log2(np.abs(model.v)) + exponents(model)
+    return np.where(model.r < 0.5 * np.abs(model.v), size, np.nan)
 
 
 def _takeovers(sizes: FloatArray) -> list[float]:
     """Frequencies at which the largest row of log sizes (rows, grid) changes, by linear interpolation."""
+    known = np.isfinite(sizes).all(axis=0)
     largest = np.argmax(sizes, axis=0)
-    before = np.flatnonzero(largest[1:] != largest[:-1])
-    gap = sizes[largest[before], before] - sizes[largest[before + 1], before]
-    gap_after = sizes[largest[before + 1], before + 1] - sizes[largest[before], before + 1]
-    share = np.clip(np.nan_to_num(gap / (gap + gap_after), nan=0.5), 0.0, 1.0)
+    before = np.flatnonzero((largest[1:] != largest[:-1]) & known[1:] & known[:-1])
+    first, second = largest[before], largest[before + 1]
+    gap = sizes[first, before] - sizes[second, before]
+    gap_after = sizes[second, before + 1] - sizes[first, before + 1]
+    share = np.nan_to_num(gap / (gap + gap_after), nan=0.5)
     logarithm = np.log(SEARCH_GRID)
     places = np.exp(logarithm[before] + share * (logarithm[before + 1] - logarithm[before]))
     return [float(place) for place in places]

@@ -14,6 +14,7 @@ import numpy as np
 
 from encircle.engine.band_cells import BandOfLoop, CellSets
 from encircle.engine.counting import Counter
+from encircle.engine.grids import distinct
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.result import FloatArray
 
@@ -22,7 +23,7 @@ PARTS = 8  # of a cell that is split
 MOST_CELLS = 40_000  # evaluated before the bounds are taken as they are
 NARROWEST = 1e-12  # cells are split down to this part of their frequency ...
 STANDSTILL = 1e-9  # ... and the one that begins at 0 to this part of the lowest feature
-NEVER = 1e9  # a contact that comes at standstill or at infinity, and only beyond this, does not come
+NEVER = 1e6  # beyond this (120 dB) a contact comes only where the middle of a cell meets it
 FAR_RATIO = 1.6  # beyond the counted cells L is followed in such steps ...
 FAR_STEPS = 48  # ... to 6e9 times the last edge
 TAIL_RATIO = 1.05  # a narrow cell there stands for infinity
@@ -68,7 +69,7 @@ class BandCells:
 def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) -> BandCells:
     """Counted cells, cut at every measured line, one of width 0 at each first line, and wide ones beyond."""
     system = counter.system
-    edges = np.unique(np.concatenate([[0.0], counter.cells(loop.stage.part), system.lines]))
+    edges = distinct(np.concatenate([[0.0], counter.cells(loop.stage.part), system.lines]))
     far = edges[-1] * FAR_RATIO ** np.arange(1.0, FAR_STEPS + 1.0)
     edges = np.concatenate([np.sort(np.concatenate([edges, system.first_lines])), far])
     lower, upper, end = edges[:-1], edges[1:], edges[-1:]
@@ -86,11 +87,14 @@ class _Search:
     def __init__(self, band: BandOfLoop, contacts: Contacts, standstill: float) -> None:
         self._band, self._contacts, self._standstill = band, contacts, standstill
         self._least: list[FirstContact] = []
+        self._at_ends: list[list[FirstContact]] = []
         self._evaluated = 0
 
     def run(self, start: BandCells) -> list[FirstContact]:
-        tail = _unless_never(self._contacts(start.tail, start.tail_upper))
+        tail = self._contacts(start.tail, start.tail_upper)
+        tail[tail >= NEVER] = np.inf
         self._least = [FirstContact(float(value), np.inf, np.inf) for value in tail[:, 0]]
+        self._at_ends.append(self._least.copy())
         lower, upper = start.lower, start.upper
         bound, reached = self._contacts(start.cells, upper), self._contacts(start.middles, 0.5 * (lower + upper))
         best = tail[:, 0]
@@ -99,7 +103,14 @@ class _Search:
             lower, upper = self._divide(lower, upper, bound, best)
             if len(lower):
                 bound, reached = self._level(lower, upper)
-        return self._least
+        return [self._at_end_if_equal(row, least) for row, least in enumerate(self._least)]
+
+    def _at_end_if_equal(self, row: int, least: FirstContact) -> FirstContact:
+        """What is approached at standstill or at infinity is said to come there."""
+        for end in self._at_ends:
+            if end[row].value <= least.value * (1.0 + 2.0 * AGREEMENT):
+                return FirstContact(least.value, end[row].lower, end[row].upper)
+        return least
 
     def _level(self, lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Contacts on cells and at their middles, (rows, cells) each."""
@@ -113,23 +124,21 @@ class _Search:
         self, lower: FloatArray, upper: FloatArray, bound: FloatArray, best: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
         """Parts of the cells that may hold less than the best middle value; the bounds of the others are kept."""
-        undercut = (bound < best[:, None] * (1.0 - AGREEMENT)).any(axis=0)
+        undercut = ((bound < best[:, None] * (1.0 - AGREEMENT)) & (bound < NEVER)).any(axis=0)
         wide = upper - lower > np.where(lower > 0.0, NARROWEST * upper, self._standstill)
         split = undercut & wide & (self._evaluated + PARTS * undercut.sum() <= MOST_CELLS)
-        self._record(lower[~split], upper[~split], bound[:, ~split])
+        certain = np.where(bound < NEVER, bound, np.maximum(bound, best[:, None]))
+        self._record(lower[~split], upper[~split], certain[:, ~split])
         return parts_of(lower[split], upper[split])
 
     def _record(self, lower: FloatArray, upper: FloatArray, bound: FloatArray) -> None:
         if not bound.size:
             return
-        bound = np.where(upper <= self._standstill, _unless_never(bound), bound)
         for row, place in enumerate(bound.argmin(axis=1)):
             if bound[row, place] < self._least[row].value:
                 self._least[row] = FirstContact(float(bound[row, place]), float(lower[place]), float(upper[place]))
-
-
-def _unless_never(bound: FloatArray) -> FloatArray:
-    return np.where(bound > NEVER, np.inf, bound)
+        for column in np.flatnonzero(lower == 0.0):
+            self._at_ends.append([FirstContact(float(value), 0.0, float(upper[column])) for value in bound[:, column]])
 
 
 def parts_of(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -13,6 +13,7 @@ import numpy as np
 from encircle.engine.block_poles import FactorPoles, poles_of
 from encircle.engine.closing_order import PartKey
 from encircle.engine.encirclement import Ending, OpenCell, count_zeros
+from encircle.engine.grids import distinct
 from encircle.engine.high_frequency import FarCause, FarField, FarGrowth, FarProduct
 from encircle.engine.loop_determinant import Determinant
 from encircle.engine.loop_system import LoopSystem
@@ -159,7 +160,7 @@ class Counter:
         start = FIRST_EDGE * self.system.lowest
         edges = np.concatenate([[0.0], _geometric(start, max(radius, 2.0 * start))])
         if len(self.system.lines):
-            edges = np.unique(np.concatenate([edges, self.system.lines]))
+            edges = distinct(np.concatenate([edges, self.system.lines]))
             edges = np.sort(np.concatenate([edges, self.system.first_lines]))  # twice: the step at the first line
         return edges
 

@@ -17,7 +17,7 @@ from encircle.engine.sampled_curve import SampledCurve, sample
 
 DENSITIES = (1, 4, 16)
 # With dead time L is followed down to these sizes until two changes of Z are found
-SMALLEST = (1e-2, 1e-4, 1e-6)
+SMALLEST = (0.05, 1e-3, 1e-6)
 
 
 @dataclass(frozen=True, slots=True)

@@ -27,6 +27,7 @@ from encircle.engine.delay_kernel import DelayKernelModel
 from encircle.engine.diagram import Diagram, build_diagram
 from encircle.engine.errors import Problem, ProjectError
 from encircle.engine.factor_models import FactorModel
+from encircle.engine.grids import distinct
 from encircle.engine.irrational_factor import IrrationalBlock
 from encircle.engine.loop_determinant import Determinant, DeterminantBuilder
 from encircle.engine.measured_factor import MeasuredModel, measured_factors
@@ -121,7 +122,7 @@ def compile_system(declarations: Declarations) -> LoopSystem:
         determinants,
         features,
         _resonances(transfers.values()),
-        np.unique(np.concatenate(lines)) if lines else np.empty(0),
+        distinct(np.concatenate(lines)) if lines else np.empty(0),
         np.array([omega[0] for omega in lines]),
     )
 

@@ -129,7 +129,8 @@ class OpenLoop:
         Delayed terms of its leading power swing it so far, or its asymptote is the negative real axis itself and delayed
         terms of lower order swing L about it.
         """
-        return not self.is_zero and self.delayed and self.infinity.reaches_negative_axis()
+        only_bounded = self.infinity.prompt[1] == 0  # a decay faster than any power turns for ever as well
+        return not self.is_zero and (self.delayed or only_bounded) and self.infinity.reaches_negative_axis()
 
     def _leads(self, gains: Gains, closing: bool) -> dict[tuple[Fraction, Fraction], Fraction]:
         """Exact leading coefficients by (order, delay); factors that are no polynomials count with their known lead."""

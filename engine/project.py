@@ -17,6 +17,7 @@ from encircle.engine.closing_order import PartKey, Stage
 from encircle.engine.counting import Counter
 from encircle.engine.declarations import Declarations, MeasuredBlock
 from encircle.engine.errors import Problem, ProjectError
+from encircle.engine.grids import distinct
 from encircle.engine.high_frequency import FarCause
 from encircle.engine.loop_curve import loop_curve
 from encircle.engine.loop_result import loop_result
@@ -208,7 +209,7 @@ class Project:
 
     def _lines(self, stage: Stage) -> FloatArray:
         found = [model.lines for model in self._shared.system.measured_in(stage.part)]
-        return np.unique(np.concatenate(found)) if found else np.empty(0)
+        return distinct(np.concatenate(found)) if found else np.empty(0)
 
     def _refuse_ill_posed(self) -> None:
         """Refuse algebraic loops without a solution at any stage, naming the signals of the cycle."""

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from encircle.engine.far_end import FarEnd
+from encircle.engine.grids import distinct
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.result import ComplexArray, FloatArray
 
@@ -73,7 +74,7 @@ def _start(loop: OpenLoop, hints: FloatArray, breaks: FloatArray, finer: int, sm
     inner = hints[(hints > lowest) & (hints < highest)]
     closeness = 10.0 ** -np.arange(1.0, 1.5 - np.log10(NEAREST_TO_POLE))
     near = [pole * (1.0 + sign * closeness) for pole in breaks for sign in (-1.0, 1.0)]
-    omega = np.unique(np.concatenate([grid, inner, *near]))
+    omega = distinct(np.concatenate([grid, inner, *near]))
     for pole in breaks:
         omega = omega[np.abs(omega - pole) >= 0.9 * NEAREST_TO_POLE * pole]
     return omega

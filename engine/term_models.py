@@ -25,6 +25,7 @@ from numpy.typing import NDArray
 
 from encircle.engine.coprime_factors import Factor, Powers
 from encircle.engine.factor_models import FactorModel
+from encircle.engine.grids import distinct
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
@@ -126,7 +127,8 @@ class TermModels:
         self._others = [models[factor] for factor in others]
         self._layout = _layout([powers for powers, _ in terms], places, count + len(others))
         self.delays = np.array([float(delay) for _, delay in terms])
-        self._some_delays, self._delay_place = np.unique(self.delays, return_inverse=True)
+        self._some_delays = distinct(self.delays)
+        self._delay_place = np.searchsorted(self._some_delays, self.delays)
         self._delta = np.array([_combined_delta(powers, found) for powers, _ in terms])
         self._slack = (np.abs(self._layout.exponents).sum(axis=1) + 12.0) * SLACK
         self._measured = [count + i for i, model in enumerate(self._others) if model.measured]
