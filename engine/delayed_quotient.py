@@ -27,9 +27,6 @@ class UnusableBlockError(ValueError):
         self.predicate = predicate
         self.key = key
 
-    def __reduce__(self) -> tuple[type[UnusableBlockError], tuple[str, str, str]]:
-        return (type(self), (self.code, self.predicate, self.key))
-
 
 @dataclass(frozen=True, slots=True)
 class DelayedQuotient:
@@ -46,7 +43,7 @@ class DelayedQuotient:
     delayed_sum: DelayedSum = ()
 
     def __post_init__(self) -> None:
-        _check_size(self.gain.numerator.bit_length(), self.gain.denominator.bit_length())
+        check_size(self.gain.numerator.bit_length(), self.gain.denominator.bit_length())
         if self.numerator or self.delayed_sum:
             check_order(degree(self.numerator) + max((n.degree for _, n in self.delayed_sum), default=0))
         if self.denominator:
@@ -100,7 +97,7 @@ class DelayedQuotient:
         if not exponent:
             return DelayedQuotient(Fraction(1))
         bits = max(self.gain.numerator.bit_length(), self.gain.denominator.bit_length())
-        _check_size((bits - 1) * exponent)
+        check_size((bits - 1) * exponent)
         plain = DelayedQuotient(
             self.gain**exponent,
             Counter({factor: m * exponent for factor, m in self.numerator.items()}),
@@ -203,12 +200,13 @@ def check_order(order: int, key: str = "") -> None:
 
 def _check_coefficients(p: Polynomial) -> None:
     check_order(p.degree)
-    _check_size(*(max(c.numerator.bit_length(), c.denominator.bit_length()) for c in p.coefficients))
+    check_size(*(max(c.numerator.bit_length(), c.denominator.bit_length()) for c in p.coefficients))
 
 
-def _check_size(*bits: int) -> None:
+def check_size(*bits: int) -> None:
+    """Raises UnusableBlockError for numbers of more bits than exact arithmetic handles quickly."""
     if max(bits, default=0) > MAXIMUM_BITS:
         raise UnusableBlockError(
             "too-many-digits",
-            "leads to numbers with thousands of digits: write constants with fewer digits and smaller exponents",
+            "leads to numbers with thousands of digits: write constants with fewer digits and closer to 1",
         )

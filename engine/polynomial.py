@@ -8,10 +8,10 @@ from functools import lru_cache
 from math import lcm
 
 import numpy as np
-from numpy.typing import NDArray
 
 from encircle.engine import integer_polynomial
 from encircle.engine.polynomial_roots import simple_roots
+from encircle.engine.result import ComplexArray, FloatArray
 from encircle.engine.routh import right_half_plane_roots
 
 
@@ -210,7 +210,7 @@ class Polynomial:
             on_axis += multiplicity * (factor.degree - 2 * on_the_right)
         return right, on_axis
 
-    def roots(self) -> NDArray[np.complex128]:
+    def roots(self) -> ComplexArray:
         """The roots (degree,) with repeats, each accurate to double precision, ascending |s|; read-only.
 
         Real roots and roots on the imaginary axis come out exactly there, the others as exact conjugate pairs. Raises
@@ -225,7 +225,7 @@ class Polynomial:
         """The primitive integer polynomial with the same roots, leading coefficient positive; not for zero."""
         return integer_polynomial.primitive_part(_over_common_denominator(self)[0])
 
-    def as_floats(self) -> NDArray[np.float64]:
+    def as_floats(self) -> FloatArray:
         """The coefficients rounded to double precision, ascending; OverflowError beyond its range."""
         return np.array([float(c) for c in self.coefficients])
 
@@ -244,7 +244,7 @@ def _quotient(dividend: Polynomial, divisor: Polynomial) -> Polynomial:
 
 
 @lru_cache(maxsize=4096)
-def _roots(p: Polynomial) -> NDArray[np.complex128]:
+def _roots(p: Polynomial) -> ComplexArray:
     at_zero = p.order_at_zero()
     found = [np.zeros(at_zero, complex)]
     for factor, multiplicity in p.shifted_down(at_zero).square_free_factors():
@@ -264,7 +264,7 @@ def _in_square(p: Polynomial) -> Polynomial:
     return Polynomial(tuple(spread))
 
 
-def _roots_of_even(p: Polynomial) -> NDArray[np.complex128]:
+def _roots_of_even(p: Polynomial) -> ComplexArray:
     """Roots of a square-free even polynomial: plus and minus the square roots of those in s^2."""
     squares = simple_roots(Polynomial(p.coefficients[::2]).integers())
     real = np.where(squares.real < 0, 1j, 1) * np.sqrt(np.abs(squares.real))

@@ -15,8 +15,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-FloatArray = NDArray[np.float64]
-ComplexArray = NDArray[np.complex128]
+from encircle.engine.result import ComplexArray
 
 _SETTLED = 2.0**-88  # |p/(z p')| at which an iterate z held as two doubles has converged
 _REAL = 2.0**-78  # |im| below this part of |root| is rounding

@@ -7,6 +7,7 @@ from fractions import Fraction
 from math import lcm
 
 from encircle.engine.characteristic_polynomial import IntMatrix, characteristic_polynomials
+from encircle.engine.delayed_quotient import check_size
 from encircle.engine.integer_polynomial import multiply
 from encircle.engine.polynomial import Polynomial
 
@@ -16,9 +17,13 @@ Vector = Sequence[Fraction]
 def state_space_polynomials(
     A: Sequence[Vector], B: Vector, C: Vector, D: Fraction
 ) -> tuple[Polynomial, list[Polynomial]]:
-    """The numerator, and monic polynomials whose product is det(sI - A): one for each strongly connected part of A."""
+    """The numerator, and monic polynomials whose product is det(sI - A): one for each strongly connected part of A.
+
+    Raises UnusableBlockError where the entries of a large A differ so much in size that determinants grow out of hand.
+    """
     scale = _common_denominator(*A)
     matrix = [_integers(row, scale) for row in A]
+    check_size(sum(max(map(int.bit_length, row)) for row in matrix))  # a determinant may have as many bits
     parts = characteristic_polynomials(matrix) if matrix else []
     whole = [1]
     for part in parts:

@@ -24,9 +24,9 @@ from encircle.engine.errors import Problem, ProjectError
 from encircle.engine.formula_reduction import reduce_formula
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.polynomial_factors import Factors, S, as_factors, degree, over_common_base, separated
+from encircle.engine.result import ComplexArray
 from encircle.engine.state_space import state_space_polynomials
 
-ComplexArray = NDArray[np.complex128]
 FactorList = tuple[tuple[Polynomial, int], ...]
 ModelBlock = FormulaBlock | CoefficientBlock | RootBlock | StateSpaceBlock
 
@@ -86,7 +86,10 @@ def cancelled_right_half_plane(tf: TransferFunction) -> bool:
 
 
 def evaluate(tf: TransferFunction, s: ComplexArray) -> ComplexArray:
-    """X(s) at any array of points s (rad/s), in plain double precision; infinite at a pole."""
+    """X(s) at any array of points s (rad/s), in plain double precision; infinite at a pole.
+
+    Near a zero that terms of ``delayed_sum`` have in common, as at s = 0 in (1 - exp(-T s))/(T s), digits are lost.
+    """
     s = np.asarray(s, complex)
     zeros, poles = _all_roots(tf.numerator, tf.power), _all_roots(tf.denominator, -tf.power)
     above, above_exponent = _product_of_differences(s, zeros)
@@ -108,7 +111,7 @@ def _of_formula(block: FormulaBlock) -> TransferFunction | None:
     if quotient is not None and block.unstable_poles is not None:
         raise UnusableBlockError(
             "unstable-poles-needless",
-            "is rational in s with dead time, so its poles are found: remove the key `unstable_poles`",
+            "is rational in s (dead time apart), so its poles are found: remove the key `unstable_poles`",
         )
     return None if quotient is None else _in_lowest_terms(quotient)
 

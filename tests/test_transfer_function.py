@@ -360,6 +360,12 @@ class TestRefusals:
         huge = StateSpaceBlock("plant", ((Fraction(10) ** 400,),), zeros[:1], zeros[:1], Fraction(0), Fraction(0), "")
         assert refusal(huge)[0] == "out-of-range"
 
+    def test_state_space_of_sizes_too_different(self) -> None:
+        sizes = [[Fraction(10) ** ((i * j) % 601 - 300) for j in range(60)] for i in range(60)]
+        ones = (Fraction(1),) * 60
+        block = StateSpaceBlock("plant", tuple(map(tuple, sizes)), ones, ones, Fraction(0), Fraction(0), "")
+        assert refusal(block)[0] == "too-many-digits"
+
     def test_poles_too_close_to_tell_apart(self) -> None:
         expanded = math.prod((linear(-1 - Fraction(k, 10**30)) for k in range(12)), start=Polynomial.of(1))
         block = CoefficientBlock("plant", (Fraction(1),), expanded.coefficients[::-1], Fraction(0), "")
