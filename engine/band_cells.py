@@ -3,7 +3,7 @@
 On a cell A and B are enclosures that share the place t in the cell and each measured block's place in its stadium. With
 a the middle of A and l = b/a, the numerator B - l A has its middle at 0, and
 
-    L in l + (B - l A)/a + Disc(rho),  rho <= |B - l A| |1/A - 1/a|,  |1/A - 1/a| <= R_A/(|a| (|a| - R_A)),
+    L in l + (B - l A)/a + Disc(rho),  rho <= |B - l A| |1/A - 1/a|,  |1/A - 1/a| <= R_A/(|a| min|A|),
 
 which is exact where A is a constant. Where A is nearly 0 (poles of L on the axis) 1/L = A/B is enclosed the same way.
 Where neither serves, |A + B| > 0 alone still bounds every first contact.
@@ -118,7 +118,7 @@ class BandOfLoop:
         both = self._models.on_cells(lower, upper).combine(self._weights)
         with np.errstate(all="ignore"):
             near_A, near_B = _clearances(both)
-            inverted = ~(_relative_reach(both, 0) <= _relative_reach(both, 1))
+            inverted = ~(_bend(_row(both, 0)) <= _bend(_row(both, 1)))
             denominator, numerator = _swapped(both, inverted)
             sets = _quotient(numerator, denominator)
         proved = np.isfinite(sets.rho) & np.isfinite(sets.c)
@@ -150,11 +150,19 @@ def _size(model: Models) -> FloatArray:
     return size
 
 
-def _relative_reach(both: Models, i: int) -> FloatArray:
-    """Reach of A (0) or B (1) from its middle, relative to it; below 1 it is proved not to vanish; inf for NaN."""
-    model = _row(both, i)
-    reach = _size(model) / np.abs(model.v)
-    return np.where(np.isnan(reach), np.inf, reach)
+def _bend(model: Models) -> FloatArray:
+    """An upper bound of |a/A - 1| for a model of A with the middle a; inf where A may vanish."""
+    reach = _size(model)
+    least = np.fmax(np.abs(model.v) - reach, _distance_from_zero(model))
+    return np.where(least > 0.0, reach / least, np.inf)
+
+
+def _distance_from_zero(model: Models) -> FloatArray:
+    """A lower bound of the modulus; 0 where the model may vanish."""
+    radius = 0.5 * np.abs(model.e) + np.abs(model.u).sum(axis=0) + model.r + SAFE * (np.abs(model.v) + _size(model))
+    sets = _two_longest(model.v + 0.5 * model.e, np.concatenate([model.d[None], model.g]), radius)
+    least = distance(sets.edges, 0.0).min(axis=0)
+    return np.where(~sets.hold(0.0) & (least > 0.0), least, 0.0)
 
 
 def _swapped(both: Models, inverted: np.ndarray) -> tuple[Models, Models]:
@@ -178,9 +186,8 @@ def _quotient(numerator: Models, denominator: Models) -> ConvexSets:
     rounding = SAFE * (np.abs(numerator.v) + _size(numerator) + size * _size(denominator))
     r = numerator.r + size * denominator.r + rounding
     whole = np.abs(d) + np.abs(e) + np.abs(g).sum(axis=0) + np.abs(u).sum(axis=0) + r
-    reach, modulus = _size(denominator), np.abs(a)
-    bend = np.where(reach < modulus, reach / (modulus - reach), np.inf)
-    radius = (0.5 * np.abs(e) + np.abs(u).sum(axis=0) + r + np.where(bend > 0.0, whole * bend, 0.0)) / modulus
+    bend = _bend(denominator)
+    radius = (0.5 * np.abs(e) + np.abs(u).sum(axis=0) + r + np.where(bend > 0.0, whole * bend, 0.0)) / np.abs(a)
     return _two_longest(ratio + 0.5 * e / a, np.concatenate([d[None], g]) / a, radius * (1.0 + SAFE))
 
 
@@ -197,12 +204,10 @@ def _two_longest(c: ComplexArray, generators: ComplexArray, rho: FloatArray) -> 
 
 def _clearances(both: Models) -> tuple[FloatArray, FloatArray]:
     """Lower bounds of |A + B|/|A| and |A + B|/|B|, 0 where A + B may vanish."""
-    v, d, e, r = (getattr(both, name).sum(axis=0) for name in "vder")
-    g, u = both.g.sum(axis=1), both.u.sum(axis=1)
     sizes = np.array([np.abs(both.v[i]) + _size(_row(both, i)) for i in (0, 1)])
-    radius = 0.5 * np.abs(e) + np.abs(u).sum(axis=0) + r + SAFE * sizes.sum(axis=0)
-    total = _two_longest(v + 0.5 * e, np.concatenate([d[None], g]), radius)
-    clear = np.where(total.hold(0.0), 0.0, np.maximum(distance(total.edges, 0.0).min(axis=0), 0.0))
+    v, d, e, r = (getattr(both, name).sum(axis=0) for name in "vder")
+    rounded = r + SAFE * sizes.sum(axis=0)
+    clear = _distance_from_zero(Models(v, d, e, rounded, both.g.sum(axis=1), both.u.sum(axis=1)))
     near = np.where(np.isfinite(clear) & np.isfinite(sizes), clear / sizes, 0.0)
     return near[0], near[1]
 

@@ -2,29 +2,32 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Literal
 
 import numpy as np
 
 from encircle.engine.band_cells import BandOfLoop, CellSets, Contact, first_contacts
 from encircle.engine.contact_search import BandCells, FirstContact, least_contacts
+from encircle.engine.gain_map import FactorRange
 from encircle.engine.margins import decibels, frequency_of
 from encircle.engine.result import DelayMargin, FloatArray, GainMargin, Margins, ModulusMargin, Peak, PhaseMargin
 
 
 def data_margins(
-    band: BandOfLoop, start: BandCells, crossovers: FloatArray, unit: float
-) -> tuple[Margins, FirstContact, FirstContact]:
-    """All margins as guaranteed by the band, and the first contacts of a factor and of a divisor above 1.
+    band: BandOfLoop, start: BandCells, ranges: Sequence[FactorRange], crossovers: FloatArray, unit: float
+) -> Margins:
+    """All margins as guaranteed by the band; those of gain end the range that holds 1.
 
     ``crossovers`` (rad/s) are those of the chords, ``unit`` is the file's frequency unit in rad/s.
     """
-    increase, decrease, near, T, turn, delay = least_contacts(band, start, _sought)
+    present = next(r for r in ranges if r.lower < 1.0 and (r.upper is None or r.upper > 1.0))
+    near, T, turn, delay = least_contacts(band, start, _sought)
     place = frequency_of(near.omega, unit)
     S, largest_T = 1.0 / near.value, 1.0 / T.value
-    margins = Margins(
-        gain_increase=_gain(increase, 1.0, unit),
-        gain_decrease=_gain(decrease, -1.0, unit),
+    return Margins(
+        gain_increase=_gain(present.upper, present.upper_omega, unit),
+        gain_decrease=_gain(present.lower, present.lower_omega, unit),
         phase=_phase(band, turn, unit),
         delay=_delay(start, delay, unit),
         modulus=ModulusMargin(near.value, place),
@@ -32,21 +35,20 @@ def data_margins(
         complementary_peak=Peak(largest_T, decibels(largest_T), frequency_of(T.omega, unit)),
         gain_crossovers=tuple(float(w) / unit for w in crossovers),
     )
-    return margins, increase, decrease
 
 
 def _sought(cells: CellSets, upper: FloatArray) -> FloatArray:
-    """Rows: factor, divisor, |1 + L|, |1 + 1/L|, the smaller turn in rad, lag over frequency in s."""
+    """Rows: |1 + L|, |1 + 1/L|, the smaller turn in rad, lag over frequency in s."""
     found = first_contacts(cells)
     lag, lead = found[Contact.LAG], found[Contact.LEAD]
     with np.errstate(all="ignore"):
-        return np.vstack([found[: Contact.LAG], np.minimum(lag, lead), lag / upper])
+        return np.vstack([found[Contact.DISTANCE], found[Contact.INVERSE_T], np.minimum(lag, lead), lag / upper])
 
 
-def _gain(found: FirstContact, sign: float, unit: float) -> GainMargin | None:
-    if np.isinf(found.value):
+def _gain(factor: float | None, omega: float | None, unit: float) -> GainMargin | None:
+    if factor is None or factor == 0.0:
         return None
-    return GainMargin(found.value**sign, decibels(found.value), frequency_of(found.omega, unit))
+    return GainMargin(factor, abs(decibels(factor)), frequency_of(omega, unit))
 
 
 def _phase(band: BandOfLoop, found: FirstContact, unit: float) -> PhaseMargin | None:

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from encircle.engine.band_cells import BandOfLoop, CellSets, blocked_factors, gain_contacts
-from encircle.engine.contact_search import BandCells, FirstContact, least_contacts, parts_of
+from encircle.engine.contact_search import BandCells, least_contacts, parts_of
 from encircle.engine.gain_map import Count, FactorRange
 from encircle.engine.result import FloatArray
 
@@ -20,24 +20,40 @@ LARGEST_EXTENT = 0.2  # of a cell's set relative to L, beyond twice what the dat
 SMALLEST = 1e-3  # smaller L is not looked at closely
 
 
-def data_ranges(band: BandOfLoop, start: BandCells, present: FactorRange, count: Count) -> tuple[FactorRange, ...]:
+def data_ranges(
+    band: BandOfLoop, start: BandCells, endless: bool, count: Count, present: int
+) -> tuple[FactorRange, ...]:
     """Ranges of a factor on top of the gain with Z in each, ascending; gaps where the data decide nothing.
 
-    ``present`` is the range that holds 1; ``count`` proves Z at factors (``None``: undecided).
+    ``count`` proves Z at factors (``None``: undecided), ``present`` is Z at 1. ``endless``: infinitely many changes follow
+    (dead time), and the list stops after the second change above 1.
     """
-    ranges = [present]
+    ranges = [_range_round(1.0, band, start, present)]
     for probe in _probes(free_stretches(band, start)):
-        if any(r.lower < probe and (r.upper is None or probe < r.upper) for r in ranges):
+        enough = endless and probe > 1.0 and any(r.lower > 1.0 for r in ranges)
+        if enough or any(r.lower < probe and (r.upper is None or probe < r.upper) for r in ranges):
             continue
         (unstable,) = count([probe])
         if unstable is not None and unstable >= 0:
-            contacts = least_contacts(band.scaled(probe), start.scaled(probe), _gains_only)
-            ranges.append(range_between(probe, *contacts, unstable))
-    return tuple(sorted(ranges, key=lambda found: found.lower))
+            ranges.append(_range_round(probe, band.scaled(probe), start.scaled(probe), unstable))
+    return _united(sorted(ranges, key=lambda found: found.lower))
 
 
-def range_between(probe: float, up: FirstContact, down: FirstContact, unstable: int) -> FactorRange:
-    """The range round a free factor, up to the first contacts on both sides."""
+def _united(ranges: list[FactorRange]) -> tuple[FactorRange, ...]:
+    """Join ranges that overlap: the bound found from one side can be better than from the other."""
+    found = ranges[:1]
+    for after in ranges[1:]:
+        before = found[-1]
+        if before.upper is not None and before.upper <= after.lower:
+            found.append(after)
+        elif before.upper is not None and (after.upper is None or after.upper > before.upper):
+            found[-1] = FactorRange(before.lower, after.upper, before.unstable, before.lower_omega, after.upper_omega)
+    return tuple(found)
+
+
+def _range_round(probe: float, band: BandOfLoop, start: BandCells, unstable: int) -> FactorRange:
+    """The range round a free factor, up to the first contacts on both sides; ``band`` is that of probe times L."""
+    up, down = least_contacts(band, start, _gains_only)
     lower, lower_omega = (probe / down.value, down.omega) if np.isfinite(down.value) else (0.0, None)
     upper, upper_omega = (probe * up.value, up.omega) if np.isfinite(up.value) else (None, None)
     return FactorRange(lower, upper, unstable, lower_omega, upper_omega)

@@ -10,7 +10,7 @@ from encircle.engine.counting import Counter, Gains
 from encircle.engine.crossings import NegativeCrossing, UnboundedArc, unbounded_arcs, unit_crossings
 from encircle.engine.data_crossings import chord_crossings, off_the_axis
 from encircle.engine.data_margins import data_margins
-from encircle.engine.data_ranges import data_ranges, range_between
+from encircle.engine.data_ranges import data_ranges
 from encircle.engine.loop_study import DENSITIES, LoopStudy, sample_loop
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.sampled_curve import SampledCurve
@@ -30,9 +30,8 @@ def study_data(
     def count(factors: Sequence[float]) -> list[int | None]:
         return counter.count_at_factors(loop.stage.part, loop.stage.loop, gains, factors)
 
-    margins, increase, decrease = data_margins(band, start, unit_crossings(loop, curve), unit)
-    present = range_between(1.0, increase, decrease, unstable)
-    ranges = data_ranges(band, start, present, count)
+    ranges = data_ranges(band, start, loop.endless, count, unstable)
+    margins = data_margins(band, start, ranges, unit_crossings(loop, curve), unit)
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, margins)
 
 
