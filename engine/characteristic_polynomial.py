@@ -33,7 +33,7 @@ def _strongly_connected_parts(matrix: IntMatrix) -> list[list[int]]:
     """Indices that reach one another; ordered so, the matrix is block triangular."""
     reach = np.array([[bool(entry) for entry in row] for row in matrix]) | np.eye(len(matrix), dtype=bool)
     for _ in range(len(matrix).bit_length()):
-        reach = reach.astype(np.float32) @ reach.astype(np.float32) > 0
+        reach = reach @ reach  # of truth values: no linear algebra library has to wake up
     mutual = reach & reach.T
     first = mutual.argmax(axis=1)
     return [np.flatnonzero(first == i).tolist() for i in np.unique(first)]
