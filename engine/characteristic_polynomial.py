@@ -36,7 +36,7 @@ def _strongly_connected_parts(matrix: IntMatrix) -> list[list[int]]:
         reach = reach @ reach  # of truth values: no linear algebra library has to wake up
     mutual = reach & reach.T
     first = mutual.argmax(axis=1)
-    return [np.flatnonzero(first == i).tolist() for i in np.unique(first)]
+    return [np.flatnonzero(first == i).tolist() for i in sorted(set(first.tolist()))]
 
 
 def _characteristic_polynomial(matrix: IntMatrix) -> list[int]:
