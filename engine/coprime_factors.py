@@ -79,14 +79,14 @@ def coprime_factors(transfer: TransferFunction, scale: float) -> CoprimeFactors:
     normaliser: dict[Factor, int] = {}
     for factor, power in _denominator(transfer).items():
         _raise(below, factor, power)
-        for stand_in in hurwitz_stand_ins(factor, scale):
-            _raise(normaliser, stand_in, power)
+        for partner in hurwitz_stand_ins(factor, scale):
+            _raise(normaliser, partner, power)
     common: dict[Factor, int] = dict(transfer.numerator)
     if _net_power(transfer) > 0 or transfer.unreduced_power:
         _raise(common, S, max(_net_power(transfer), 0) + transfer.unreduced_power)
-    for factor, power in normaliser.items():
-        _raise(common, factor, -power)
-        _raise(below, factor, -power)
+    for stand_in, power in normaliser.items():
+        _raise(common, stand_in, -power)
+        _raise(below, stand_in, -power)
     numerator = tuple(_times(product, common) for product in _finite_elements(transfer))
     return CoprimeFactors(numerator, _elements_at_infinity(transfer, common), _clean(below))
 

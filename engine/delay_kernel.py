@@ -56,7 +56,7 @@ class DelayKernelModel:
     def _derivatives(self, theta: FloatArray) -> tuple[ComplexArray, ComplexArray, ComplexArray, FloatArray]:
         """k! (phi, phi', phi'') of order k at y = -j theta, and a bound of their rounding errors."""
         k = self._order
-        phi, error = _phi(k + 2, -1j * theta)
+        phi, error = _phi(k + 2, (-1j * theta).astype(complex))
         first = phi[k] - k * phi[k + 1]
         second = first - k * (phi[k + 1] - (k + 1) * phi[k + 2])
         scale = factorial(k)

@@ -19,7 +19,7 @@ from enum import Enum
 
 import numpy as np
 
-from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.result import BoolArray, ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
 from encircle.engine.term_models import Models
 
@@ -74,7 +74,9 @@ class Counting:
 Enclose = Callable[[FloatArray, FloatArray], Models]
 
 
-def count_zeros(enclose: Enclose, endings: list[Ending], edges: FloatArray, lines: FloatArray, lowest: float) -> Counting:
+def count_zeros(
+    enclose: Enclose, endings: list[Ending], edges: FloatArray, lines: FloatArray, lowest: float
+) -> Counting:
     """Zeros in Re s > 0 of each function that ``enclose`` gives on cells, shape (functions, cells).
 
     ``edges`` (n + 1,) ascending from 0 to at least every ending's radius, rad/s; an edge that occurs twice makes a
@@ -116,11 +118,11 @@ class _Walk:
         self.evaluations += len(lower)
         clear, crowding = exclude_zero(models)
         clear[~self.alive] = True
-        done = clear.all(axis=0)
-        stuck = ~done & (upper - lower <= FLOOR * np.maximum(upper, self.lowest))
+        done: BoolArray = np.all(clear, axis=0)
+        stuck: BoolArray = ~done & (upper - lower <= FLOOR * np.maximum(upper, self.lowest))
         if self.data and (~done).any():
             self._give_up_on_data(lower, upper, clear, ~done)
-            done = clear.all(axis=0)
+            done = np.all(clear, axis=0)
             stuck &= ~done
         if stuck.any():
             self._fail(lower, upper, ~clear & stuck, Cause.TOUCHES_ZERO)
@@ -128,7 +130,7 @@ class _Walk:
         self._accept(models, lower, upper, done)
         return _split(lower[~done], upper[~done], crowding[:, ~done].max(axis=0, initial=0.0))
 
-    def _give_up_on_data(self, lower: FloatArray, upper: FloatArray, clear: np.ndarray, candidates: np.ndarray) -> None:
+    def _give_up_on_data(self, lower: FloatArray, upper: FloatArray, clear: BoolArray, candidates: BoolArray) -> None:
         """Splitting cannot help where the data's own width hides 0 at the centre of the cell; marks such cells
         clear.
         """
@@ -142,13 +144,13 @@ class _Walk:
             clear |= hopeless
             clear[~self.alive] = True
 
-    def _fail(self, lower: FloatArray, upper: FloatArray, where: np.ndarray, cause: Cause) -> None:
+    def _fail(self, lower: FloatArray, upper: FloatArray, where: BoolArray, cause: Cause) -> None:
         for function, cell in zip(*np.nonzero(where), strict=True):
             self.failed[function].append(OpenCell(float(lower[cell]), float(upper[cell]), cause))
             if cause is not Cause.DATA:
                 self.alive[function] = False
 
-    def _accept(self, models: Models, lower: FloatArray, upper: FloatArray, done: np.ndarray) -> None:
+    def _accept(self, models: Models, lower: FloatArray, upper: FloatArray, done: BoolArray) -> None:
         v, d, e, g = models.v[:, done], models.d[:, done], models.e[:, done], models.g[..., done]
         self.accepted.append((lower[done], upper[done], v - d + e, v + d + e, g))
 
@@ -169,7 +171,7 @@ class _Walk:
         return Counting(tuple(counts), np.append(lower, upper[-1]), self.evaluations)
 
 
-def exclude_zero(models: Models) -> tuple[np.ndarray, FloatArray]:
+def exclude_zero(models: Models) -> tuple[BoolArray, FloatArray]:
     """Whether 0 lies outside each enclosure (False also where nothing is proved), and how far the radius crowds the
     value.
 
@@ -235,15 +237,17 @@ def _turns(
     At a measured line the half chord is walked to its end and from the start of the next one: both stand-ins lie in the
     convex set of their own cell and both stand for the value at the line.
     """
-    turn = np.angle(stop / start).sum(axis=1)
+    turn: FloatArray = np.angle(stop / start).sum(axis=1)
     if len(g) == 0:
-        return turn + np.angle(start[:, 1:] / stop[:, :-1]).sum(axis=1)
+        turn += np.angle(start[:, 1:] / stop[:, :-1]).sum(axis=1)
+        return turn
     at_line = np.isin(upper[:-1], lines)
     full_stop = stop[:, :-1] + np.where(at_line, g[..., :-1], 0.0).sum(axis=0)
     full_start = start[:, 1:] - np.where(at_line, g[..., 1:], 0.0).sum(axis=0)
     turn += np.angle(full_stop / stop[:, :-1]).sum(axis=1)
     turn += np.angle(full_start / full_stop).sum(axis=1)
-    return turn + np.angle(start[:, 1:] / full_start).sum(axis=1)
+    turn += np.angle(start[:, 1:] / full_start).sum(axis=1)
+    return turn
 
 
 def _zeros(turn: float, first: complex, last: complex, ending: Ending) -> int:

@@ -62,7 +62,7 @@ class FarGrowth:
     """
 
     def __init__(self, polynomials: Iterable[Polynomial], highest: float) -> None:
-        self.radii = highest * 2.0 ** np.arange(DOUBLINGS)
+        self.radii: FloatArray = np.ldexp(highest, np.arange(DOUBLINGS))
         unique = list(dict.fromkeys(polynomials))
         self._place = {polynomial: i for i, polynomial in enumerate(unique)}
         found = [sections(polynomial) for polynomial in unique]
@@ -181,7 +181,8 @@ def _relative_spread(rows: FloatArray, radii: FloatArray) -> FloatArray:
     lead = np.where(second, a2, np.where(a1 != 0.0, a1, a0))
     next_one = np.where(second, a1, np.where(a1 != 0.0, a0, 0.0))
     last = np.where(second, a0, 0.0)
-    return (next_one + last / radii) / radii / lead * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
+    spread: FloatArray = (next_one + last / radii) / radii / lead * (1.0 + 8.0 * UNIT) + 2.0 * UNIT
+    return spread
 
 
 def _float_upper(value: Fraction) -> float:

@@ -73,10 +73,10 @@ class MeasuredModel:
         m = self._m
         x = np.where(inside, h / w, 0.0)
         v = np.where(inside, v * (1j * w) ** m, v)
-        a, b = m * x + 0j, 0.5 * m * (m - 1) * x * x + 0j
+        a, b = (m * x).astype(complex), (0.5 * m * (m - 1) * x * x).astype(complex)
         majorant = (1.0 + x) ** m if m >= 0 else np.where(x < 1.0, 1.0 - x, 0.0) ** m
-        eps = majorant - 1.0 - np.abs(a) - np.abs(b) + 8.0 * UNIT * (4 + abs(m)) * majorant
-        return v, a, b, np.maximum(eps, 8.0 * UNIT)
+        tail: FloatArray = majorant - 1.0 - np.abs(a) - np.abs(b) + 8.0 * UNIT * (4 + abs(m)) * majorant
+        return v, a, b, np.maximum(tail, 8.0 * UNIT)
 
     def band(self, w: FloatArray, h: FloatArray) -> tuple[ComplexArray, FloatArray]:
         """Half the chord, and ``between_lines`` times the whole chord as radius; a bound on all of Y above the last
@@ -95,7 +95,8 @@ class MeasuredModel:
         if self.block.roll_off is None:
             return np.full(len(w), np.inf)
         last = float(self.lines[-1])
-        return np.abs(self.H[-1]) * (last / np.maximum(w, last)) ** float(self.block.roll_off)
+        bound: FloatArray = np.abs(self.H[-1]) * (last / np.maximum(w, last)) ** float(self.block.roll_off)
+        return bound
 
     def at_points(self, omega: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         """Y on the chords; 0, the middle of the disc, above the last line."""

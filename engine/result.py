@@ -20,6 +20,7 @@ Outcome = Literal["pass", "fail", "undecided"]
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+BoolArray = NDArray[np.bool_]
 
 
 @dataclass(frozen=True, slots=True)

@@ -15,7 +15,7 @@ import numpy as np
 from encircle.engine.far_end import FarEnd
 from encircle.engine.grids import distinct
 from encircle.engine.open_loop import OpenLoop
-from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.result import BoolArray, ComplexArray, FloatArray
 
 POINTS_PER_DECADE = 12
 LARGEST_TURN = 0.3  # rad, of L and of 1 + L between neighbours
@@ -38,12 +38,13 @@ class SampledCurve:
     breaks: FloatArray
 
     @property
-    def joined(self) -> np.ndarray:
+    def joined(self) -> BoolArray:
         """(n - 1,) whether neighbours belong to one unbroken piece."""
         if len(self.breaks) == 0:
             return np.ones(len(self.omega) - 1, bool)
         piece = np.searchsorted(self.breaks, self.omega)
-        return piece[1:] == piece[:-1]
+        same: BoolArray = piece[1:] == piece[:-1]
+        return same
 
 
 def sample(loop: OpenLoop, hints: FloatArray, smallest: float, finer: int = 1) -> SampledCurve:
@@ -104,7 +105,7 @@ def _ends(loop: OpenLoop, smallest: float) -> tuple[float, float]:
 
 def _on_asymptote(
     omega: FloatArray, L: ComplexArray, slope: ComplexArray, order: float, limit: float | None
-) -> np.ndarray:
+) -> BoolArray:
     """d log L/d log omega is close to its limit; a finite limit is reached on its own side of |L| = 1."""
     with np.errstate(all="ignore"):
         settled = np.abs(omega * slope / L - order) <= 1e-3
@@ -115,13 +116,13 @@ def _on_asymptote(
     return settled
 
 
-def _near_asymptote(omega: FloatArray, L: ComplexArray, far: FarEnd) -> np.ndarray:
+def _near_asymptote(omega: FloatArray, L: ComplexArray, far: FarEnd) -> BoolArray:
     """L is within reach of value * (j omega)^order: delayed terms of lower order no longer turn it across an axis."""
     with np.errstate(all="ignore"):
         return np.abs(L / (far.value * (1j * omega) ** far.order) - 1.0) < 0.3 + far.spread()
 
 
-def _beyond_one(L: ComplexArray, order: float) -> np.ndarray:
+def _beyond_one(L: ComplexArray, order: float) -> BoolArray:
     """Moving outward, |L| has left 1 behind for good: large where it grows without bound, small where it vanishes."""
     if order == 0.0:
         return np.ones(len(L), bool)

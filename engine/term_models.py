@@ -82,7 +82,8 @@ class Models:
 def _real_times(weights: FloatArray, values: ComplexArray) -> ComplexArray:
     """A real matrix times complex columns, without promoting the matrix to complex."""
     values = np.ascontiguousarray(values)
-    return np.matmul(weights, values.view(np.float64)).view(np.complex128)
+    result: ComplexArray = np.matmul(weights, values.view(np.float64)).view(np.complex128)
+    return result
 
 
 class _Factors(NamedTuple):
@@ -155,7 +156,7 @@ class TermModels:
             for i, model in enumerate(self._others, start=count):
                 v[i], change = model.at_points(omega)
                 slope[i] = np.where(v[i] == 0.0, 0.0, change / v[i])
-            V = self._reduce(v, 1.0 / v)
+            V: ComplexArray = self._reduce(v, np.reciprocal(v))
             relative = _real_times(self._layout.exponents, slope)
             if self._some_delays[-1] > 0.0:
                 V *= np.exp(-1j * np.outer(self._some_delays, omega))[self._delay_place]
@@ -248,7 +249,8 @@ class TermModels:
 
     def _reduce(self, values: NumericArray, reciprocals: NumericArray) -> NumericArray:
         gathered = np.concatenate([values, reciprocals])[self._layout.chosen]
-        return np.multiply.reduceat(gathered, self._layout.starts, axis=0)
+        product: NumericArray = np.multiply.reduceat(gathered, self._layout.starts, axis=0)
+        return product
 
 
 def centres_and_halves(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:

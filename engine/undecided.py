@@ -100,7 +100,7 @@ def _cell(counter: Counter, key: PartKey, gains: Gains, cell: OpenCell, unit: fl
 
 
 def _has_band(model: MeasuredModel, omega: float) -> bool:
-    return omega >= model.lines[0]
+    return bool(omega >= model.lines[0])
 
 
 def _room(counter: Counter, key: PartKey, gains: Gains, omega: float) -> float:
