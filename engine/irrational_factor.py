@@ -1,6 +1,7 @@
-"""A formula that is irrational in s as coprime factors: its power of s at 0 taken out, the rest enclosed by composed models.
+"""A formula that is irrational in s as coprime factors.
 
-H = s^p R with R finite and not 0 at s = 0. For p >= 0, N = s^p R and M = 1. For p < 0, N = R (s + a)^p and
+Its power of s at 0 is taken out, the rest enclosed by composed models. H = s^p R with R finite and
+not 0 at s = 0. For p >= 0, N = s^p R and M = 1. For p < 0, N = R (s + a)^p and
 M = (s/(s + a))^-p, both continuous on the closed right half plane; whole powers of s stand as polynomial factors.
 """
 

@@ -126,8 +126,8 @@ class OpenLoop:
     def _keeps_turning(self) -> bool:
         """Whether dead time makes L cross the negative real axis for ever.
 
-        Delayed terms of its leading power swing it so far, or its asymptote is the negative real axis itself and delayed
-        terms of lower order swing L about it.
+        Delayed terms of its leading power swing it so far, or its asymptote is the negative real axis itself and
+        delayed terms of lower order swing L about it.
         """
         only_bounded = self.infinity.prompt[1] == 0  # a decay faster than any power turns for ever as well
         return not self.is_zero and (self.delayed or only_bounded) and self.infinity.reaches_negative_axis()

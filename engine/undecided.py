@@ -18,7 +18,9 @@ ON_THE_AXIS = "the closed loop has a pole on the axis near {at}, or one that can
 LEAST_RATIO = 1e-3  # the band is this much wider than the distance to -1: no spacing of lines would decide
 
 
-def explain(counter: Counter, key: PartKey, gains: Gains, count: PartCount, unit: float) -> tuple[UndecidedStretch, ...]:
+def explain(
+    counter: Counter, key: PartKey, gains: Gains, count: PartCount, unit: float
+) -> tuple[UndecidedStretch, ...]:
     """Each stretch that prevents the count of a part; ``unit`` is the file's frequency unit in rad/s."""
     system = counter.system
     off = [model for model in system.measured_in(key) if model.first_line_is_off()]
@@ -46,8 +48,8 @@ def _at_infinity(system: LoopSystem, key: PartKey, cause: FarCause, unit: float)
             return _above_last_line(model, unit)
     if cause is FarCause.NEUTRAL:
         why = (
-            "with dead time the gain at infinite frequency reaches 1 (a neutral loop): arbitrarily small changes of the "
-            "dead times would move infinitely many poles across the axis; add roll-off to the loop"
+            "with dead time the gain at infinite frequency reaches 1 (a neutral loop): arbitrarily small changes of "
+            "the dead times would move infinitely many poles across the axis; add roll-off to the loop"
         )
     elif cause is FarCause.ILL_POSED:
         why = "1 + L tends to 0 at infinite frequency: put the dynamics that the devices have there into their blocks"
@@ -58,7 +60,8 @@ def _at_infinity(system: LoopSystem, key: PartKey, cause: FarCause, unit: float)
 
 def _contradiction(system: LoopSystem, key: PartKey, count: int) -> UndecidedStretch:
     """Fewer poles than none: the declarations cannot be true."""
-    stated = [(block, system.declared[block]) for block in dict.fromkeys(system.blocks_in(key)) if block in system.declared]
+    blocks = dict.fromkeys(system.blocks_in(key))
+    stated = [(block, system.declared[block]) for block in blocks if block in system.declared]
     named = " and ".join(f"`unstable_poles = {poles}` of `{block}`" for block, poles in stated)
     why = (
         f"{named} cannot be true: the closed loop would have {count} unstable poles, so at least {-count} more must be "
@@ -70,8 +73,8 @@ def _contradiction(system: LoopSystem, key: PartKey, count: int) -> UndecidedStr
 def _first_line(model: MeasuredModel, unit: float) -> UndecidedStretch:
     m = model.block.integrators
     why = (
-        f"the first line of `{model.block.name}` lies more than 45 degrees off its asymptote k/s^{m}: measure further down, "
-        "or correct `integrators`"
+        f"the first line of `{model.block.name}` lies more than 45 degrees off its asymptote k/s^{m}: measure further "
+        "down, or correct `integrators`"
     )
     return UndecidedStretch(0.0, float(model.lines[0]) / unit, why)
 
@@ -118,7 +121,7 @@ def _gap(model: MeasuredModel, omega: float, ratio: float, unit: float) -> Undec
     if place == len(lines) + 1:
         if model.block.roll_off is None:
             return _above_last_line(model, unit)
-        why = f"above the last line of `{name}` the declared roll-off does not keep the loop from -1: measure further up"
+        why = f"above the last line of `{name}` the declared roll-off does not keep L from -1: measure further up"
         return UndecidedStretch(float(lines[-1]) / unit, None, why)
     if place == 1:
         why = (
