@@ -72,16 +72,21 @@ class PseudoTerminal:
                 self._stream.feed(data)
         return self.written[before:]
 
-    def wait_until(self, holds: Callable[[], bool]) -> None:
-        """Read until something holds; the test fails where it never does."""
+    def wait_until(self, holds: Callable[[], bool], what: str) -> None:
+        """Read until something holds; the test fails where it never does, saying ``what`` was waited for."""
         ending = time.monotonic() + PATIENCE
         while not holds():
-            assert time.monotonic() < ending, f"never came to hold; the screen was:\n{self.text()}"
+            told = f"{what} never came; last written: {self.written[-200:]!r}; the screen was:\n{self.text()}"
+            assert time.monotonic() < ending, told
             self.read(0.05)
 
     def wait_for(self, text: str) -> None:
         """Read until a text stands on the screen."""
-        self.wait_until(lambda: text in self.text())
+        self.wait_until(lambda: text in self.text(), text)
+
+    def wait_until_stopped(self) -> None:
+        """Read until the child has been stopped, as by ctrl+z."""
+        self.wait_until(lambda: os.waitpid(self.child, os.WNOHANG | os.WUNTRACED)[0] != 0, "a stop")
 
     def status(self) -> int:
         """The exit status, as a shell would tell it; what was still written is read."""
@@ -93,7 +98,7 @@ class PseudoTerminal:
                 found.append(os.waitstatus_to_exitcode(status))
             return bool(found)
 
-        self.wait_until(ended)
+        self.wait_until(ended, "the end")
         self.read(0.2)
         return found[0]
 

@@ -27,38 +27,45 @@ def terminal(tmp_path: Path) -> Iterator[PseudoTerminal]:
     opened.close()
 
 
-def test_it_opens_answers_keys_follows_the_window_and_quits(terminal: PseudoTerminal) -> None:
+def test_it_opens_answers_pauses_follows_the_window_and_quits(terminal: PseudoTerminal) -> None:
     for heading in ("Loops, inside to outside", "Room: flow", "Turns round −1: flow", "L of flow, near −1"):
         terminal.wait_for(heading)
     assert b"\x1b[?1000h" not in terminal.written  # the mouse stays the user's
     terminal.send("j++")
     terminal.wait_for("+2.00 dB")
-    terminal.wait_until(lambda: terminal.read(0.5) == b"")
+    terminal.wait_until(lambda: terminal.read(0.5) == b"", "silence")
     assert terminal.read(1.0) == b""  # nothing is sent while nothing changes
+    terminal.send("\x1a")  # ctrl+z; then, as fg does:
+    terminal.wait_until_stopped()
+    assert LEFT_ALTERNATE_SCREEN in terminal.written
+    terminal.screen.reset()
+    terminal.signal(signal.SIGCONT)
+    terminal.wait_for("Room: level")
     terminal.resize(80, 24)
-    terminal.wait_until(lambda: "loop" in terminal.screen.display[23])
-    terminal.send("q")
+    terminal.wait_until(lambda: "loop" in terminal.screen.display[23], "a footer in row 24")
+    terminal.send("\x03")
     assert terminal.status() == 0
     assert LEFT_ALTERNATE_SCREEN in terminal.written
     assert SHOWED_CURSOR in terminal.written
     assert terminal.settings_now() == terminal.settings
 
 
-@pytest.mark.parametrize(("number", "status"), [(signal.SIGTERM, 143), (signal.SIGHUP, 129)])
-def test_told_to_end_it_leaves_the_terminal_whole_and_keeps_the_trial(
-    number: signal.Signals, status: int, tmp_path: Path, terminal: PseudoTerminal
-) -> None:
+def test_told_to_end_it_leaves_the_terminal_whole_and_keeps_the_trial(tmp_path: Path, terminal: PseudoTerminal) -> None:
     terminal.send("+")
     terminal.wait_for("+1.00 dB")
-    terminal.signal(number)
-    assert terminal.status() == status
-    assert terminal.written.rstrip().endswith(LEFT_ALTERNATE_SCREEN) or LEFT_ALTERNATE_SCREEN in terminal.written
-    assert terminal.settings_now() == terminal.settings
+    _end(terminal, signal.SIGHUP)
     again = PseudoTerminal(*START, columns=120, lines=40, XDG_STATE_HOME=str(tmp_path))
     again.wait_for("TRIAL gains of last time are in force again: flow +1.00 dB")
-    again.send("\x03")
-    assert again.status() == 0
+    _end(again, signal.SIGTERM)
     again.close()
+
+
+def _end(terminal: PseudoTerminal, number: signal.Signals) -> None:
+    terminal.signal(number)
+    assert terminal.status() == 128 + number
+    assert LEFT_ALTERNATE_SCREEN in terminal.written
+    assert SHOWED_CURSOR in terminal.written
+    assert terminal.settings_now() == terminal.settings
 
 
 def test_a_dropped_line_ends_the_process(tmp_path: Path) -> None:
@@ -68,37 +75,18 @@ def test_a_dropped_line_ends_the_process(tmp_path: Path) -> None:
     assert opened.status() == 129
 
 
-def test_paused_and_brought_back_it_draws_itself_anew(terminal: PseudoTerminal) -> None:
-    terminal.send("\x1a")
-    terminal.wait_until(lambda: LEFT_ALTERNATE_SCREEN in terminal.written)
-    terminal.screen.reset()
-    terminal.signal(signal.SIGCONT)
-    terminal.wait_for("Room: flow")
-    terminal.send("\x03")
-    assert terminal.status() == 0
-
-
-def test_no_color_means_no_colour(tmp_path: Path) -> None:
-    opened = PseudoTerminal(*START, columns=80, lines=24, XDG_STATE_HOME=str(tmp_path), NO_COLOR="1")
+def test_no_color_means_no_colour_and_a_plain_encoding_plain_ascii(tmp_path: Path) -> None:
+    plain = {"NO_COLOR": "1", "PYTHONIOENCODING": "ascii", "PYTHONUTF8": "0"}
+    opened = PseudoTerminal(*START, columns=80, lines=24, XDG_STATE_HOME=str(tmp_path), **plain)
     opened.wait_for("PASS")
-    opened.send("+j-?")
-    opened.wait_for("Keys and terms")
-    opened.send("q")
-    assert opened.status() == 0
-    opened.close()
-    assert not COLOUR.search(opened.written)
-
-
-def test_a_plain_encoding_gets_plain_ascii(tmp_path: Path) -> None:
-    opened = PseudoTerminal(
-        *START, columns=80, lines=24, XDG_STATE_HOME=str(tmp_path), PYTHONIOENCODING="ascii", PYTHONUTF8="0"
-    )
-    opened.wait_for("PASS")
+    opened.send("+j-g\x1b")
+    opened.wait_for("gain 0.8913")
     opened.send("?")
     opened.wait_for("Keys and terms")
     opened.send("q")
     assert opened.status() == 0
     opened.close()
+    assert not COLOUR.search(opened.written)
     assert opened.written.isascii()
     assert b"\\u" not in opened.written
 

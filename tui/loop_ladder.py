@@ -12,7 +12,7 @@ from collections.abc import Sequence
 from rich.cells import cell_len
 
 from encircle.engine.result import LoopResult
-from encircle.tui.margin_names import short_finding, short_found
+from encircle.tui.margin_names import SHORT_NAMES, short_finding, short_found
 from encircle.tui.picture import Picture
 from encircle.tui.sheet import MINUS, Ink, Piece, Row, Run, Sheet, padded, row_width
 from encircle.tui.tightest_limit import missed_limits, tightest_limit
@@ -153,10 +153,11 @@ def least_room(loop: LoopResult, frequency_unit: str) -> tuple[Sequence[Run], ..
     if finding is None:
         return ([("no limits set", Ink.QUIET)],)
     full, brief = short_finding(finding, frequency_unit), short_found(finding, frequency_unit)
+    name = SHORT_NAMES[finding.name]
     missed = missed_limits(loop)
     if missed:
         more = f" and {len(missed) - 1} more" if len(missed) > 1 else ""
-        return tuple([("MISSED", Ink.ALARM), (f" {words}", Ink.BAD)] for words in (full + more, full, brief))
+        return tuple([("MISSED", Ink.ALARM), (f" {words}", Ink.BAD)] for words in (full + more, full, brief, name))
     plain: list[Run] = [(full, Ink.PLAIN)]
     return [*plain, ("  least room", Ink.QUIET)], plain, [(brief, Ink.PLAIN)]
 

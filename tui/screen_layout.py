@@ -45,7 +45,7 @@ def _column(x: int, y: int, width: int, *panels: tuple[Panel, int]) -> tuple[Pla
 
 def _narrow(width: int, rows: int, view: View, loops: int) -> tuple[Placement, ...]:
     """Ladder above one panel of text, beside one plot."""
-    left = min(max(width * 46 // 100, 36), 48)
+    left = min(max(width // 2, 36), 48)
     ladder = ladder_height(loops, rows * 45 // 100)
     return (
         *_column(0, TITLE_ROWS, left, (Panel.LOOPS, ladder), (view.text, rows - ladder)),
