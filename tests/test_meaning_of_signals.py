@@ -246,15 +246,27 @@ def test_a_pole_at_standstill_that_the_dead_times_cancel_is_none(tmp_path: Path)
     assert loop.axis_poles_left == ()
 
 
-def test_irrational_formulas_rest_on_the_declared_poles(tmp_path: Path) -> None:
-    """K exp(-sqrt(s)): |L| = K exp(-x), phase -x with x = sqrt(w/2); at x = pi the limit K = e^pi, w = 2 pi^2."""
-    loop = one_block('formula = "exp(-sqrt(s))"\nunstable_poles = 0', tmp_path, "10*block*e").loop("loop")
+@pytest.mark.parametrize(
+    ("formula", "limit", "omega"),
+    [
+        # x = sqrt(w/2): exp(-sqrt(s)) has size exp(-x) and angle -x, so it is real again at x = pi
+        ("exp(-sqrt(s))", math.exp(math.pi), 2 * math.pi**2),
+        # cosh((1 + j) x) = cosh x cos x + j sinh x sin x: real and negative at x = pi (a rod heated at one end)
+        ("1/cosh(sqrt(s))", math.cosh(math.pi), 2 * math.pi**2),
+        # (1 + s)^1.5: angle -1.5 atan(w) - w = -pi at w = 1.6164266
+        ("exp(-s)/(1 + s)^1.5", (1 + 1.616426591572**2) ** 0.75, 1.616426591572),
+    ],
+)
+def test_irrational_formulas_rest_on_the_declared_poles(
+    formula: str, limit: float, omega: float, tmp_path: Path
+) -> None:
+    loop = one_block(f'formula = "{formula}"\nunstable_poles = 0', tmp_path).loop("loop")
     assert loop.evidence == "declared"
     assert loop.verdict == "stable"
     assert loop.margins is not None
     assert loop.margins.gain_increase is not None
-    assert loop.margins.gain_increase.factor == pytest.approx(math.exp(math.pi) / 10, rel=1e-6)
-    assert loop.margins.gain_increase.frequency == pytest.approx(2 * math.pi**2, rel=1e-5)
+    assert loop.margins.gain_increase.factor == pytest.approx(limit, rel=1e-6)
+    assert loop.margins.gain_increase.frequency == pytest.approx(omega, rel=1e-6)
 
 
 @pytest.mark.parametrize(
