@@ -90,7 +90,7 @@ def full_drawing(width: int, height: int) -> Drawing:
             Curve(np.array([-1.0, 1.0]), np.array([-1.0, 1.0]), Role.CURVE),
             Curve(np.array([-1.0, 1.0]), np.zeros(2), Role.LIMIT, gap=3),
         ),
-        marks=tuple(Mark(0, 0.5, glyph, Role.CURSOR, "−1 ∞") for glyph in Glyph),
+        marks=tuple(Mark(0.9 - 0.2 * place, 0.5, glyph, Role.CURSOR, "−1 ∞") for place, glyph in enumerate(Glyph)),
         uprights=(Upright(0.5, Role.CURSOR),),
         x_ticks=(Tick(-1, "-∞"), Tick(1, "1k")),
         y_ticks=(Tick(-1, "90°"), Tick(0, "0"), Tick(1, "a label far too long")),
@@ -134,6 +134,18 @@ def test_the_higher_role_owns_a_shared_cell() -> None:
     rows = draw(Drawing(Frame(10, 3, 0, 0), UNIT, curves))
     assert len(cells(rows, Role.CURVE)) == 10
     assert cells(rows, Role.UNIT_CIRCLE) == cells(rows, Role.CURVE_BEFORE) == []
+
+
+def test_a_lower_role_adds_no_dots_to_a_shared_cell() -> None:
+    """Of a row of four dots to the cell, the lower role has the second from below, the higher the third."""
+    heights = [-1 + 2 * dot / 3 for dot in (1, 2)]
+    lines = [(np.array([-1.0, 1.0]), np.full(2, height)) for height in heights]
+    frame = Frame(10, 1, 0, 0)
+    alone = text(draw(Drawing(frame, UNIT, (Curve(*lines[1], Role.CURVE),))))
+    below = (Curve(*lines[0], role) for role in (Role.AXIS, Role.UNIT_CIRCLE, Role.BAND, Role.CURVE_BEFORE))
+    assert all(text(draw(Drawing(frame, UNIT, (Curve(*lines[1], Role.CURVE), low)))) == alone for low in below)
+    both = draw(Drawing(frame, UNIT, (Curve(*lines[1], Role.CURVE), Curve(*lines[0], Role.MIRROR))))
+    assert len(dots(both, Role.CURVE)) == 40
 
 
 def test_words_stand_beside_their_mark_or_nowhere() -> None:

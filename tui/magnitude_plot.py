@@ -236,14 +236,12 @@ def _degree_range(seen: FloatArray) -> tuple[float, float]:
 
 
 def _rounded_range(seen: FloatArray, always: float, step: float, most: float) -> tuple[float, float]:
-    """A range in whole steps that holds ``always``; of a range too long the end further from ``always`` is cut."""
+    """A range in whole steps that holds ``always``; of one longer than ``most`` each end keeps up to half of that."""
     ends = np.quantile(seen, (0.01, 0.99)) if seen.size else np.array([always, always])
-    lower = step * np.floor((min(ends[0], always) - always) / step - 0.02)
-    upper = step * np.ceil((max(ends[1], always) - always) / step + 0.02)
-    excess = max(upper - lower - most, 0.0)
-    if -lower > upper:
-        return float(always + lower + excess), float(always + upper)
-    return float(always + lower), float(always + upper - excess)
+    below = step * np.ceil(max(always - ends[0], 0.0) / step + 0.02)
+    above = step * np.ceil(max(ends[1] - always, 0.0) / step + 0.02)
+    room_below, room_above = max(most / 2, most - above), max(most / 2, most - below)
+    return float(always - min(below, room_below)), float(always + min(above, room_above))
 
 
 def _tick_count(frame: Frame) -> int:
