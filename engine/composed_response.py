@@ -127,7 +127,7 @@ def _features(formula: Product) -> tuple[float, ...]:
             found.update(_takeovers(np.array([_logarithm(term) for term in terms])))
         elif isinstance(factor, Function):
             argument = ray.full(factor.argument)
-            known = argument.r < 0.1 * np.abs(argument.v)  # else rounding alone would look like a feature
+            known: BoolArray = np.less(argument.r, 0.1 * np.abs(argument.v))  # else rounding alone would look like a feature
             size = np.where(known, _logarithm(argument), -np.inf)
             size = np.where(np.isfinite(size), size, size[known][-1] if known.any() else -1.0)
             found.update(_takeovers(np.array([size, np.zeros_like(size)])))
@@ -159,7 +159,7 @@ def _logarithm(model: TaylorModel) -> FloatArray:
 
 def _takeovers(sizes: FloatArray) -> list[float]:
     """Frequencies at which the largest row of log sizes (rows, grid) changes, by linear interpolation."""
-    known = np.isfinite(sizes).all(axis=0)
+    known: BoolArray = np.asarray(np.isfinite(sizes).all(axis=0))
     largest = np.argmax(sizes, axis=0)
     before = np.flatnonzero((largest[1:] != largest[:-1]) & known[1:] & known[:-1])
     first, second = largest[before], largest[before + 1]

@@ -272,6 +272,8 @@ def test_features_are_the_corners_of_the_formula() -> None:
     assert composed("exp(-sqrt(s*T))").features == pytest.approx([1 / 0.37], rel=1e-6)
     assert composed("((s + a)/(s + b))^0.25").features == pytest.approx([0.04, 2.5], rel=1e-6)
     assert composed("sqrt(s)").features == ()
+    assert composed("exp(-T*sqrt(s*(s + a)))").features == pytest.approx([2.19, 2.5], rel=0.05)
+    assert composed("s*exp(-T*s) + sqrt(s)").features == pytest.approx([1.0, 1 / 0.37], rel=1e-6)
 
 
 # -- counts with closed-form answers
