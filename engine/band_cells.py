@@ -18,7 +18,7 @@ import numpy as np
 
 from encircle.engine.closing_order import Stage
 from encircle.engine.counting import Counter, Gains, term_weights
-from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.result import BoolArray, ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
 from encircle.engine.stadium_contacts import RealPart, Stadiums, distance, least_ratio, real_part, turns
 from encircle.engine.term_models import Models
@@ -59,12 +59,12 @@ class ConvexSets:
         size: FloatArray = np.abs(self.p) + np.abs(self.q) + self.rho
         return size
 
-    def hold(self, point: complex) -> np.ndarray:
+    def hold(self, point: complex) -> BoolArray:
         """Whether a point lies inside the parallelogram."""
         z = point - self.c
         area = (self.p.conj() * self.q).imag
         along_p, along_q = (z.conj() * self.q).imag, (self.p.conj() * z).imag
-        inside: np.ndarray = (np.abs(along_p) <= np.abs(area)) & (np.abs(along_q) <= np.abs(area)) & (area != 0.0)
+        inside: BoolArray = (np.abs(along_p) <= np.abs(area)) & (np.abs(along_q) <= np.abs(area)) & (area != 0.0)
         return inside
 
     def scaled(self, factor: FloatArray) -> ConvexSets:
@@ -80,12 +80,12 @@ class CellSets:
     """
 
     sets: ConvexSets
-    inverted: np.ndarray
-    proved: np.ndarray
+    inverted: BoolArray
+    proved: BoolArray
     near_A: FloatArray
     near_B: FloatArray
 
-    def where(self, mask: np.ndarray) -> CellSets:
+    def where(self, mask: BoolArray) -> CellSets:
         """Those of the cells for which ``mask`` holds."""
         sets = ConvexSets(self.sets.c[mask], self.sets.p[mask], self.sets.q[mask], self.sets.rho[mask])
         return CellSets(sets, self.inverted[mask], self.proved[mask], self.near_A[mask], self.near_B[mask])
@@ -165,7 +165,7 @@ def _distance_from_zero(model: Models) -> FloatArray:
     return np.where(~sets.hold(0.0) & (least > 0.0), least, 0.0)
 
 
-def _swapped(both: Models, inverted: np.ndarray) -> tuple[Models, Models]:
+def _swapped(both: Models, inverted: BoolArray) -> tuple[Models, Models]:
     """Denominator and numerator of L, or of 1/L where ``inverted``."""
     A, B = _row(both, 0), _row(both, 1)
 

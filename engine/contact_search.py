@@ -1,8 +1,8 @@
 """The least first contact of a band with -1 over all frequencies, by branch and bound over cells.
 
-The set that holds L on a whole cell bounds a first contact from below, the set at the cell's middle alone is what further
-splitting cannot undercut. Cells whose bound lies below the least middle value are split until both agree. What is found
-is always a bound.
+The set that holds L on a whole cell bounds a first contact from below, the set at the cell's middle alone is what
+further splitting cannot undercut. Cells whose bound lies below the least middle value are split until both agree. What
+is found is always a bound.
 """
 
 from __future__ import annotations
@@ -62,8 +62,8 @@ class BandCells:
 
     def scaled(self, factor: float) -> BandCells:
         """The same for factor times L."""
-        scaled = [sets.scaled(factor) for sets in (self.cells, self.middles, self.tail)]
-        return BandCells(self.lower, self.upper, *scaled, self.tail_upper, self.standstill)
+        cells, middles, tail = (sets.scaled(factor) for sets in (self.cells, self.middles, self.tail))
+        return BandCells(self.lower, self.upper, cells, middles, tail, self.tail_upper, self.standstill)
 
 
 def band_on_counted_cells(counter: Counter, loop: OpenLoop, band: BandOfLoop) -> BandCells:

@@ -1,7 +1,7 @@
 """Crossings of the negative real axis by the chord curve of a loop with measured blocks.
 
-The curve jumps where a block passes from its asymptote to its first line, and from its last line to the middle of the disc
-above. Such a step is bridged by the straight way of A and of B, which lies in the same convex sets as the count.
+The curve jumps where a block passes from its asymptote to its first line, and from its last line to the middle of the
+disc above. Such a step is bridged by the straight way of A and of B, which lies in the same convex sets as the count.
 """
 
 from __future__ import annotations
@@ -64,13 +64,13 @@ def _on_steps(band: BandOfLoop, steps: FloatArray) -> tuple[FloatArray, list[Neg
     dA, dB = next_A - A, next_B - B
     free, linear, square = (B * A.conj()).imag, (dB * A.conj() + B * dA.conj()).imag, (dB * dA.conj()).imag
     bridged, found = [], []
-    for i, omega in enumerate(steps[:, 0]):
-        for t in _inner_roots(square[i], linear[i], free[i]):
+    for i, omega in enumerate(steps[:, 0].tolist()):
+        for t in _inner_roots(float(square[i]), float(linear[i]), float(free[i])):
             bridged.append(omega)
-            value = ((B[i] + t * dB[i]) / (A[i] + t * dA[i])).real
+            value = float(((B[i] + t * dB[i]) / (A[i] + t * dA[i])).real)
             turns = 2 * int(np.sign(linear[i] + 2.0 * square[i] * t))
             if value < 0.0 and np.isfinite(value):
-                found.append(NegativeCrossing(float(omega), float(value), turns))
+                found.append(NegativeCrossing(omega, value, turns))
     return np.array(bridged), found
 
 

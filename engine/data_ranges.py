@@ -1,7 +1,7 @@
 """Ranges of the gain factor of a loop with measured blocks: where -1/g stays outside the band, each with its count.
 
-Cells give the factors that may meet -1; what no cell blocks is free. Each free stretch is extended from a point inside it
-by the first contacts of the band there.
+Cells give the factors that may meet -1; what no cell blocks is free. Each free stretch is extended from a point inside
+it by the first contacts of the band there.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ import numpy as np
 from encircle.engine.band_cells import BandOfLoop, CellSets, blocked_factors, gain_contacts
 from encircle.engine.contact_search import BandCells, least_contacts, parts_of
 from encircle.engine.gain_map import Count, FactorRange
-from encircle.engine.result import FloatArray
+from encircle.engine.result import BoolArray, FloatArray
 
 MOST_RANGES = 24  # those nearest to 1 are looked at
 LEAST_WIDTH = 1e-6  # relative width of a free stretch worth a count
@@ -25,8 +25,8 @@ def data_ranges(
 ) -> tuple[FactorRange, ...]:
     """Ranges of a factor on top of the gain with Z in each, ascending; gaps where the data decide nothing.
 
-    ``count`` proves Z at factors (``None``: undecided), ``present`` is Z at 1. ``endless``: infinitely many changes follow
-    (dead time), and the list stops after the second change above 1.
+    ``count`` proves Z at factors (``None``: undecided), ``present`` is Z at 1. ``endless``: infinitely many changes
+    follow (dead time), and the list stops after the second change above 1.
     """
     ranges = [_range_round(1.0, band, start, present)]
     for probe in _probes(free_stretches(band, start)):
@@ -99,10 +99,10 @@ def _refined(band: BandOfLoop, start: BandCells) -> list[CellSets]:
     return [*done, cells]
 
 
-def _moves_far(cells: CellSets, middles: CellSets) -> np.ndarray:
+def _moves_far(cells: CellSets, middles: CellSets) -> BoolArray:
     """Cells whose set is wide although the data leave little at the cell's middle."""
     with np.errstate(all="ignore"):
         size = np.abs(middles.sets.c)
         matters = np.where(middles.inverted, size < 1.0 / SMALLEST, size > SMALLEST)
-        wide: np.ndarray = ~(cells.sets.size <= LARGEST_EXTENT * size + 2.0 * middles.sets.size)
+        wide: BoolArray = ~(cells.sets.size <= LARGEST_EXTENT * size + 2.0 * middles.sets.size)
     return wide & matters

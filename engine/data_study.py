@@ -1,4 +1,4 @@
-"""One loop with measured blocks: the chord curve and its crossings, and what the band guarantees of gain and margins."""
+"""One loop with measured blocks: the chord curve with its crossings, and what the band guarantees."""
 
 from __future__ import annotations
 

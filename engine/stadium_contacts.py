@@ -1,8 +1,8 @@
 """Where a stadium first meets -1 when it is scaled or turned, and how near it comes: closed forms, cell by cell.
 
 A stadium is a segment widened by a disc: {c + q t + z, |t| <= 1, |z| <= rho}, with -1 outside. All its extremes lie on
-its boundary, two circles and two straight sides, whose points are members of the closed set; so each extreme is the best
-of a few candidates.
+its boundary, two circles and two straight sides, whose points are members of the closed set; so each extreme is the
+best of a few candidates.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from encircle.engine.result import ComplexArray, FloatArray
+from encircle.engine.result import BoolArray, ComplexArray, FloatArray
 
 FULL_TURN = 2.0 * np.pi
 
@@ -28,17 +28,17 @@ class Stadiums(NamedTuple):
         """The largest distance of a member from the centre."""
         return np.abs(self.q) + self.rho
 
-    def columns(self, mask: np.ndarray) -> Stadiums:
+    def columns(self, mask: BoolArray) -> Stadiums:
         """Those of the last axis for which ``mask`` holds."""
         return Stadiums(self.c[..., mask], self.q[..., mask], self.rho[..., mask])
 
-    def where(self, mask: np.ndarray) -> Stadiums:
+    def where(self, mask: BoolArray) -> Stadiums:
         """Those for which ``mask`` holds, as arrays of one dimension."""
         return Stadiums(self.c[mask], self.q[mask], self.rho[mask])
 
 
 class Turns(NamedTuple):
-    """Angles in (0, 2 pi) by which a set turns until it meets -1: clockwise (lag), the other way (lead); inf if never."""
+    """Angles in (0, 2 pi) by which a set turns until it meets -1: clockwise (lag), the other way (lead), or inf."""
 
     lag: FloatArray
     lead: FloatArray
@@ -73,7 +73,7 @@ def least_ratio(sets: Stadiums) -> FloatArray:
 
 
 def _least_ratio_exactly(sets: Stadiums) -> FloatArray:
-    """z/(1 + z) = 1 - 1/(1 + z) maps discs to discs; along a side, (|1 + z|/|z|)^2 has a derivative with quadratic numerator."""
+    """z/(1 + z) = 1 - 1/(1 + z) maps discs to discs; along a side (|1 + z|/|z|)^2 has a quadratic in its derivative."""
     ends = np.maximum(_largest_over_disc(sets.c + sets.q, sets.rho), _largest_over_disc(sets.c - sets.q, sets.rho))
     least = 1.0 / ends
     for side in _sides(sets):

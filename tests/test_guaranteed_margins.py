@@ -1,8 +1,8 @@
-"""Guaranteed margins held against members of the band found one by one: none lies inside the margins, one lies near each.
+"""Guaranteed margins held against members of the band found one by one: none lies inside them, one lies near each.
 
-A value of L is possible at a frequency if the response of the measured block that makes it lies in the block's stadium (or
-in the disc above the last line); that test is exact and knows nothing of enclosures, cells or first contacts. Where two
-blocks are measured, the other one is drawn at random inside its own band.
+A value of L is possible at a frequency if the response of the measured block that makes it lies in the block's stadium
+(or in the disc above the last line); that test is exact and knows nothing of enclosures, cells or first contacts. Where
+two blocks are measured, the other one is drawn at random inside its own band.
 """
 
 from __future__ import annotations
@@ -183,8 +183,7 @@ def check_complementary(case: Case, bands: tuple[MeasuredBand, ...]) -> None:
 CHECKS = [check_gain_increase, check_phase, check_delay, check_modulus, check_complementary]
 
 
-def header(unit: str = "rad/s") -> str:
-    return f'format = 1\nfrequency_unit = "{unit}"\n'
+HEADER = 'format = 1\nfrequency_unit = "rad/s"\n'
 
 
 def lag_with_integrator(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
@@ -192,7 +191,7 @@ def lag_with_integrator(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
     omega = np.geomspace(0.02, 60.0, 150)
     H = 1 / (1j * omega * (1 + 0.5j * omega) * (1 + 0.05j * omega))
     band = MeasuredBand(omega, H, integrators=1, roll_off=3)
-    text = header() + band.write(folder, "drive") + '[blocks.controller]\nformula = "2*(1 + 1/(4*s))"\n'
+    text = HEADER + band.write(folder, "drive") + '[blocks.controller]\nformula = "2*(1 + 1/(4*s))"\n'
     text += '[signals]\ne = "-y"\ny = "drive*controller*e"\n[[loops]]\nname = "loop"\ncut = "e"\n'
 
     def makers(omega: Floats, L: Complex) -> list[Complex]:
@@ -205,10 +204,9 @@ def measured_inside(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
     """The measured block inside an inner loop closed before: L = 3 C H/(1 + H), C = (1 + s)/s/(1 + 0.02 s)."""
     omega = np.geomspace(0.02, 300.0, 900)
     band = MeasuredBand(omega, 5 / (1 + 1j * omega) / (1 + 0.02j * omega), roll_off=2)
-    text = header() + band.write(folder, "plant") + '[blocks.outer]\nformula = "3*(1 + s)/s/(1 + 0.02*s)"\n'
-    text += '[signals]\ne = "-y"\nf = "outer*e - y"\ny = "plant*f"\n'
+    text = HEADER + band.write(folder, "plant") + '[blocks.outer]\nformula = "3*(1 + s)/s/(1 + 0.02*s)"\n'
+    text += '[signals]\ne = "-x"\nx = "y"\nf = "outer*e - y"\ny = "plant*f"\n'
     text += '[[loops]]\nname = "inner"\ncut = "f"\n[[loops]]\nname = "outer_loop"\ncut = "e"\n'
-    text = text.replace('e = "-y"\nf = "outer*e - y"', 'e = "-x"\nx = "y"\nf = "outer*e - y"')
 
     def makers(omega: Floats, L: Complex) -> list[Complex]:
         s = 1j * omega
@@ -223,7 +221,7 @@ def two_measured(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
     first, second = np.geomspace(0.01, 100.0, 900), np.geomspace(0.02, 200.0, 800)
     G = MeasuredBand(first, 1 / (1 + 1j * first) ** 2, roll_off=2)
     H = MeasuredBand(second, 1 / (1 + 0.5j * second), roll_off=1)
-    text = header() + G.write(folder, "motor") + H.write(folder, "sensor")
+    text = HEADER + G.write(folder, "motor") + H.write(folder, "sensor")
     text += '[signals]\ne = "-y"\ny = "6*sensor*motor*e"\n[[loops]]\nname = "loop"\ncut = "e"\n'
     rng = np.random.default_rng(5)
 
@@ -238,7 +236,7 @@ def used_twice(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
     """One measured block used twice, both copies the same: L = 2 H^2 C, C = 1/(1 + 0.3 s)."""
     omega = np.geomspace(0.01, 100.0, 1500)
     band = MeasuredBand(omega, 1 / (1 + 1j * omega), roll_off=1)
-    text = header() + band.write(folder, "stage") + '[blocks.filter]\nformula = "1/(1 + 0.3*s)"\n'
+    text = HEADER + band.write(folder, "stage") + '[blocks.filter]\nformula = "1/(1 + 0.3*s)"\n'
     text += '[signals]\ne = "-y"\ny = "2*stage*filter*stage*e"\n[[loops]]\nname = "loop"\ncut = "e"\n'
 
     def makers(omega: Floats, L: Complex) -> list[Complex]:
@@ -249,10 +247,10 @@ def used_twice(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
 
 
 def beside_a_model(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
-    """A measured path beside a model with dead time: L = 0.9 exp(-0.2 s)/(1 + 0.1 s) + H; H ends while the model goes on."""
+    """A measured path that ends while the model beside it goes on: L = 0.9 exp(-0.2 s)/(1 + 0.1 s) + H."""
     omega = np.geomspace(0.05, 4.0, 300)
     band = MeasuredBand(omega, 1.5 / (1 + 1j * omega) ** 2, roll_off=1)
-    text = header() + band.write(folder, "path")
+    text = HEADER + band.write(folder, "path")
     text += '[blocks.model]\nformula = "0.9*exp(-0.2*s)/(1 + 0.1*s)"\n'
     text += '[signals]\ne = "-y"\ny = "model*e + path*e"\n[[loops]]\nname = "loop"\ncut = "e"\n'
 
@@ -266,7 +264,7 @@ def conditionally_stable(folder: Path) -> tuple[Case, tuple[MeasuredBand, ...]]:
     """Three integrators by two models and a measured one, held by two zeros: stable only between two gains."""
     omega = np.geomspace(0.05, 500.0, 700)
     band = MeasuredBand(omega, 4 / (1j * omega) / (1 + 0.02j * omega), integrators=1, roll_off=2)
-    text = header() + band.write(folder, "axis") + '[blocks.controller]\nformula = "(1 + s)^2/s^2"\n'
+    text = HEADER + band.write(folder, "axis") + '[blocks.controller]\nformula = "(1 + s)^2/s^2"\n'
     text += '[signals]\ne = "-y"\ny = "axis*controller*e"\n[[loops]]\nname = "loop"\ncut = "e"\n'
 
     def makers(omega: Floats, L: Complex) -> list[Complex]:
