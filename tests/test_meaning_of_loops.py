@@ -314,12 +314,19 @@ def test_verdict_with_a_pole_left_and_a_later_loop(keys: str, verdict: str, tmp_
 
 
 @pytest.mark.parametrize(
-    ("keys", "verdict", "result"), [("", "undecided", "undecided"), ("|leaves_on_axis = 1", "as_declared", "pass")]
+    ("keys", "verdict", "result", "met"),
+    [("", "undecided", "undecided", None), ("; leaves_on_axis = 1", "as_declared", "pass", True)],
 )
-def test_verdict_with_a_pole_left_and_no_later_loop(keys: str, verdict: str, result: str, tmp_path: Path) -> None:
+def test_verdict_with_a_pole_left_and_no_later_loop(
+    keys: str, verdict: str, result: str, met: bool | None, tmp_path: Path
+) -> None:
     alone = MOTOR[: MOTOR.index("speed_error =")].replace('[blocks.speed_controller]\nformula = "5"\n', "")
-    found = opened(HEAD + 'inputs = ["command"]\n' + alone + loops(CURRENT + keys), tmp_path)
-    assert found.loop("current").verdict == verdict
+    text = 'inputs = ["command"]\n' + alone + loops(CURRENT + "|limits = { phase_margin_deg = 10 }" + keys)
+    found = opened(HEAD + text, tmp_path)
+    loop = found.loop("current")
+    assert (loop.verdict, loop.unstable_poles_after) == (verdict, 0)
+    assert [limit.met for limit in loop.limits] == [met]
+    assert (loop.margins is None) == (verdict == "undecided")
     assert found.check().result == result
 
 
