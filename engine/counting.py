@@ -17,12 +17,14 @@ from encircle.engine.grids import distinct
 from encircle.engine.high_frequency import FarCause, FarField, FarGrowth, FarProduct
 from encircle.engine.loop_determinant import Determinant
 from encircle.engine.loop_system import LoopSystem
+from encircle.engine.memory import Memory
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import FloatArray
 from encircle.engine.term_models import TermModels
 
 FIRST_EDGE = 0.3  # the first cell ends at this part of the lowest feature
 GRID_RATIO = 1.6
+MOST_COUNTS = 20_000  # counts kept
 MOST_TOGETHER = 64  # settings of the gains counted at once, which bounds the memory
 
 Gains = Sequence[Fraction]
@@ -46,7 +48,7 @@ class Counter:
 
     def __init__(self, system: LoopSystem) -> None:
         self.system = system
-        self._known: dict[tuple[PartKey, tuple[Fraction, ...]], PartCount] = {}
+        self._known: Memory[tuple[PartKey, tuple[Fraction, ...]], PartCount] = Memory(MOST_COUNTS)
         self._far = _far_fields(system)
         self._models: dict[tuple[PartKey, ...], TermModels] = {}
         self._edges: dict[tuple[PartKey, ...], FloatArray] = {}

@@ -21,12 +21,14 @@ import numpy as np
 from encircle.engine.coprime_factors import Factor, Powers
 from encircle.engine.encirclement import Ending
 from encircle.engine.factor_models import FactorModel
+from encircle.engine.memory import Memory
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import FloatArray
 from encircle.engine.rounding import UNIT
 from encircle.engine.sections import sections
 
 DOUBLINGS = 120
+MOST_ANSWERS = 5_000  # endings kept, one for each setting of the factors
 BEYOND = 1e300  # stands for the logarithm of infinity: finite, so that 0 times it is 0
 
 
@@ -100,7 +102,7 @@ class FarField:
         self._asymptotes = [
             _asymptote(product, models, self.radii, disc) for product, disc in zip(products, discs, strict=True)
         ]
-        self._answers: dict[tuple[Fraction, ...], Ending | FarCause] = {}
+        self._answers: Memory[tuple[Fraction, ...], Ending | FarCause] = Memory(MOST_ANSWERS)
 
     @property
     def leads(self) -> list[tuple[Fraction, Fraction]]:
@@ -110,9 +112,7 @@ class FarField:
     def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         """The ending of sum_i factors[i] * product_i on the smallest radius that serves, or why there is none."""
         address = tuple(factors)
-        if address not in self._answers:
-            self._answers[address] = self._find_ending(address)
-        return self._answers[address]
+        return self._answers.remember(address, lambda: self._find_ending(address))
 
     def _find_ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         sums: dict[tuple[Fraction, Fraction], Fraction] = defaultdict(Fraction)

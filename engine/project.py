@@ -23,6 +23,7 @@ from encircle.engine.loop_curve import loop_curve
 from encircle.engine.loop_result import loop_result
 from encircle.engine.loop_study import LoopStudy, sample_loop
 from encircle.engine.loop_system import LoopSystem, compile_system
+from encircle.engine.memory import Memory
 from encircle.engine.open_loop import OpenLoop
 from encircle.engine.project_file import read_project
 from encircle.engine.result import (
@@ -38,6 +39,7 @@ from encircle.engine.verdict import outcome
 from encircle.engine.version import VERSION
 
 Address = tuple[int, tuple[Fraction, ...]]
+MOST_RESULTS = 200  # loop results and curves kept, each
 
 
 @dataclass(slots=True)
@@ -47,8 +49,10 @@ class _Shared:
     system: LoopSystem
     counter: Counter
     warnings: tuple[Problem, ...]
-    loops: dict[Address, tuple[LoopResult, OpenLoop, LoopStudy | None]] = field(default_factory=dict)
-    curves: dict[Address, LoopCurve] = field(default_factory=dict)
+    loops: Memory[Address, tuple[LoopResult, OpenLoop, LoopStudy | None]] = field(
+        default_factory=lambda: Memory(MOST_RESULTS)
+    )
+    curves: Memory[Address, LoopCurve] = field(default_factory=lambda: Memory(MOST_RESULTS))
 
 
 def open_project(path: str | os.PathLike[str]) -> Project:
@@ -174,9 +178,9 @@ class Project:
 
     def _study(self, stage: Stage) -> tuple[LoopResult, OpenLoop, LoopStudy | None]:
         address = self._address(stage)
-        if address not in self._shared.loops:
-            self._shared.loops[address] = loop_result(self._shared.counter, stage, self._gains, self._unit)
-        return self._shared.loops[address]
+        return self._shared.loops.remember(
+            address, lambda: loop_result(self._shared.counter, stage, self._gains, self._unit)
+        )
 
     def _count(self, keys: Sequence[PartKey], lone: Sequence[int]) -> int | None:
         """Unstable poles of the whole diagram: of all parts and of the copies in no feedback."""
