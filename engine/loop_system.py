@@ -33,6 +33,7 @@ from encircle.engine.loop_determinant import Determinant, DeterminantBuilder
 from encircle.engine.measured_factor import MeasuredModel, measured_factors
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import FloatArray
+from encircle.engine.rounding import check_elementary_functions
 from encircle.engine.shared_factors import split_shared_factors
 from encircle.engine.transfer_function import TransferFunction, transfer_function
 
@@ -89,6 +90,7 @@ def compile_system(declarations: Declarations) -> LoopSystem:
     Raises ProjectError for blocks that are refused, algebraic loops without a solution, cuts without feedback, and
     diagrams too dense to be expanded.
     """
+    check_elementary_functions()
     transfers, irrational = _transfers(declarations)
     diagram = build_diagram(declarations)
     transfers, movable = split_shared_factors(transfers)
