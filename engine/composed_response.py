@@ -126,10 +126,7 @@ def _features(formula: Product) -> tuple[float, ...]:
             terms = (ray.times_power(term, term.order) for term in factor.terms)
             found.update(_takeovers(np.array([_logarithm(term) for term in terms])))
         elif isinstance(factor, Function):
-            argument = ray.full(factor.argument)
-            known: BoolArray = np.less(argument.r, 0.1 * np.abs(argument.v))  # else rounding alone would look like a feature
-            size = np.where(known, _logarithm(argument), -np.inf)
-            size = np.where(np.isfinite(size), size, size[known][-1] if known.any() else -1.0)
+            size = _logarithm(ray.full(factor.argument))
             found.update(_takeovers(np.array([size, np.zeros_like(size)])))
     return tuple(sorted(found))
 
