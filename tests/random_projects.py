@@ -161,12 +161,21 @@ def random_controller(rng: Random, name: str) -> Block:
     return coefficients(name, [1.0, 10 ** rng.uniform(-1, 1)], [1.0, 10 ** rng.uniform(1, 3)])
 
 
-def random_cascade(rng: Random) -> Declarations:
-    """Three loops, inner first; each plant pushes back on the one before it (like back-EMF), which no cut opens."""
+def random_cascade(rng: Random, *, frictionless: bool = False) -> Declarations:
+    """Three loops, inner first; each plant pushes back on the one before it (like back-EMF), which no cut opens.
+
+    ``frictionless``: the second plant integrates, nothing pushes it back, and the innermost controller integrates: its
+    loop leaves a pole at 0.
+    """
     blocks: list[Block] = []
     signals: dict[str, tuple[Term, ...]] = {}
     for k in (1, 2, 3):
-        blocks += [random_controller(rng, f"controller_{k}"), random_plant(rng, f"plant_{k}")]
+        controller, plant = random_controller(rng, f"controller_{k}"), random_plant(rng, f"plant_{k}")
+        if frictionless and k == 1:
+            controller = coefficients("controller_1", [1.0, 10 ** rng.uniform(-1, 2)], [1.0, 0.0])
+        if frictionless and k == 2:
+            plant = coefficients("plant_2", [1.0], [1.0, 0.0])
+        blocks += [controller, plant]
         sensed = term(-1, [], f"y{k}")
         if rng.random() < 0.3:
             blocks.append(coefficients(f"sensor_{k}", [rate := 10 ** rng.uniform(1, 3)], [1.0, rate]))
@@ -178,7 +187,8 @@ def random_cascade(rng: Random) -> Declarations:
     for k in (1, 2, 3):
         drive = term(1, [], "u1" if k == 1 else f"y{k - 1}")
         push_back = -(10 ** rng.uniform(-2, 1))
-        inside = (drive, term(push_back, [], f"y{k + 1}")) if k < 3 and rng.random() < 0.7 else (drive,)
+        pushed = k == 1 if frictionless else k < 3 and rng.random() < 0.7
+        inside = (drive, term(push_back, [], f"y{k + 1}")) if pushed else (drive,)
         signals[f"y{k}"] = (term(10 ** rng.uniform(-1, 1), [f"plant_{k}"], inside),)
     loops = [loop(f"loop_{k}", f"e{k}", float(rng.choice([1.0, 0.5, 3.0]))) for k in (1, 2, 3)]
     return declared(blocks, signals, loops)
