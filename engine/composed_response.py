@@ -73,7 +73,10 @@ class Composed:
 
 
 def product_on_cells(product: Product, centre: FloatArray, half: FloatArray) -> Enclosure:
-    """A factored formula on the cells s = j(centre + half t), |t| <= 1; centre >= half >= 0, (n,), rad/s.
+    """A factored formula on the cells s = j(centre + half t), |t| <= 1, centre + half t >= 0; (n,), rad/s.
+
+    The centres and half widths are taken as they are, so that t means the same in every factor of a product; for cells
+    that must overlap, widen the halves first with ``rounding.inflated_half``.
 
     Returns v, d, e (complex), r (real, inf where nothing is proved) and integer exponents, all (n,): the values lie in
     2^exponent (v + d t + e t^2 + Disc(0, r)).

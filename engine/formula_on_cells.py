@@ -22,7 +22,7 @@ from encircle.engine import hyperbolic
 from encircle.engine.factored_formula import Analytic, Factor, Function, PrincipalPower, Product, Sum
 from encircle.engine.real_interval import RealInterval
 from encircle.engine.result import ComplexArray, FloatArray
-from encircle.engine.rounding import SLACK, TINY, UNIT, inflated_half, outward
+from encircle.engine.rounding import SLACK, TINY, UNIT, outward
 from encircle.engine.taylor_model import (
     TaylorModel,
     add,
@@ -55,7 +55,7 @@ class Ray:
 
     def __init__(self, centre: FloatArray, half: FloatArray, angle: float = QUARTER_TURN) -> None:
         self.centre = np.asarray(centre, dtype=float)
-        self.half = inflated_half(self.centre, np.asarray(half, dtype=float))
+        self.half = np.asarray(half, dtype=float)
         self._angle = angle
         self._on_axis = angle == QUARTER_TURN
         self._frequency = affine(self.centre.astype(complex), self.half.astype(complex))
