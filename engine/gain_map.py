@@ -16,7 +16,7 @@ from encircle.engine.crossings import NegativeCrossing
 
 SAME = 1e-9  # candidates closer than this (relative) are one
 DIVISIONS = 16  # parts into which a range is divided to locate a change by counts
-MOST_CANDIDATES = 1000  # those nearest to 1 are kept
+MOST_CANDIDATES = 1100  # those nearest to 1 are kept: more than a report lists, so that it can say so
 
 Count = Callable[[Sequence[float]], list[int | None]]
 

@@ -72,7 +72,7 @@ class IrrationalModel:
 
     def on_cells(self, w: FloatArray, h: FloatArray) -> RelativeModel:
         """The composed enclosure relative to its own value; infinite where nothing is proved."""
-        v, d, e, r, exponent = product_on_cells(self._product, w, np.minimum(h, w))
+        v, d, e, r, exponent = product_on_cells(self._product, w, h)
         size = np.ldexp(1.0, exponent)
         v, d, e, r = v * size, d * size, e * size, r * size
         value = never_zero(v, np.where(np.isfinite(r), r + np.abs(d) + np.abs(e), 1.0) + 1e-200)

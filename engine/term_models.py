@@ -64,6 +64,10 @@ class Models:
 
     def combine(self, weights: FloatArray) -> Models:
         """Linear combinations: ``weights`` (n, terms) of doubles, each with one rounding of its own."""
+        with np.errstate(invalid="ignore"):  # infinite radii stay infinite or become NaN: both mean not proved
+            return self._combine(weights)
+
+    def _combine(self, weights: FloatArray) -> Models:
         size = np.abs(weights)
         bands = np.abs(self.g).sum(axis=0) + np.abs(self.u).sum(axis=0)
         total = size @ (np.abs(self.v) + np.abs(self.d) + np.abs(self.e) + bands)
