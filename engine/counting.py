@@ -67,7 +67,8 @@ class Counter:
         missing = [setting for setting in settings if self._address(key, setting) not in self._known]
         for i in range(0, len(missing), MOST_TOGETHER):
             self._count_settings(key, missing[i : i + MOST_TOGETHER])
-        return [self._known[self._address(key, setting)].unstable for setting in settings]
+        counts = [self._known[self._address(key, setting)].unstable for setting in settings]
+        return [None if count is None or count < 0 else count for count in counts]  # fewer than none: a false statement
 
     def cells(self, key: PartKey) -> FloatArray:
         """Edges of the cells on which a part was last counted, rad/s."""
@@ -122,7 +123,7 @@ class Counter:
             lambda lower, upper: models.on_cells(lower, upper).combine(weights),
             endings,
             self._start_edges(keys, max(ending.radius for ending in endings)),
-            self.system.lines,
+            models.lines,
             self.system.lowest,
         )
         self._edges.setdefault(keys, counting.edges)

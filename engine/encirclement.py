@@ -13,7 +13,7 @@ Arg(a_(i+1)/b_i), all principal arguments: chord and arc lie in the convex C_i, 
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from enum import Enum
 
@@ -21,7 +21,7 @@ import numpy as np
 
 from encircle.engine.result import BoolArray, ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
-from encircle.engine.term_models import Models
+from encircle.engine.term_models import TINIEST, Models
 
 FLOOR = 1e-12  # narrowest cell, relative to its frequency or to the lowest feature
 FEWEST_EVALUATIONS = 200_000  # cells evaluated before a count gives up, besides those of the start grid
@@ -75,13 +75,14 @@ Enclose = Callable[[FloatArray, FloatArray], Models]
 
 
 def count_zeros(
-    enclose: Enclose, endings: list[Ending], edges: FloatArray, lines: FloatArray, lowest: float
+    enclose: Enclose, endings: list[Ending], edges: FloatArray, lines: Sequence[FloatArray], lowest: float
 ) -> Counting:
     """Zeros in Re s > 0 of each function that ``enclose`` gives on cells, shape (functions, cells).
 
     ``edges`` (n + 1,) ascending from 0 to at least every ending's radius, rad/s; an edge that occurs twice makes a
-    cell of width 0 (the step from an asymptote to the first measured line). ``lines``: edges at which a half chord is
-    traversed to its end. ``lowest``: the lowest feature, rad/s, which sets the absolute floor at 0.
+    cell of width 0 (the step from an asymptote to the first measured line). ``lines``: for each half chord of the
+    models, the edges at which it is traversed to its end. ``lowest``: the lowest feature, rad/s, which sets the
+    absolute floor at 0.
     """
     walk = _Walk(enclose, len(endings), lowest, len(lines) > 0)
     walk.run(edges[:-1], edges[1:])
@@ -98,6 +99,7 @@ class _Walk:
         self.lowest = lowest
         self.data = data
         self.accepted: list[tuple[FloatArray, FloatArray, ComplexArray, ComplexArray, ComplexArray]] = []
+        self.still_open = np.empty(0), np.empty(0)
         self.evaluations = 0
 
     def run(self, lower: FloatArray, upper: FloatArray) -> None:
@@ -111,6 +113,7 @@ class _Walk:
                 for function in np.flatnonzero(self.alive):
                     self.failed[function].append(whole)
                 self.alive[:] = False
+        self.still_open = lower, upper
 
     def _level(self, lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
         """One evaluation; returns the cells of the next level."""
@@ -154,21 +157,27 @@ class _Walk:
         v, d, e, g = models.v[:, done], models.d[:, done], models.e[:, done], models.g[..., done]
         self.accepted.append((lower[done], upper[done], v - d + e, v + d + e, g))
 
-    def sum_up(self, endings: list[Ending], lines: FloatArray) -> Counting:
+    def sum_up(self, endings: list[Ending], lines: Sequence[FloatArray]) -> Counting:
         lower, upper, start, stop, g = (
             np.concatenate([part[i] for part in self.accepted], axis=-1) for i in range(5)
         )
-        if len(lower) == 0:  # nothing was accepted before every function had failed
-            return Counting(tuple(Count(None, tuple(cells)) for cells in self.failed), lower, self.evaluations)
+        edges = self._edges(lower, upper)
+        if not self.alive.any():
+            return Counting(tuple(Count(None, tuple(cells)) for cells in self.failed), edges, self.evaluations)
         order = np.lexsort((upper, lower))
         lower, upper, start, stop, g = lower[order], upper[order], start[:, order], stop[:, order], g[..., order]
-        turns = _turns(lower, upper, start, stop, g, lines)
+        turns = _turns(upper, start, stop, g, lines)
         counts = []
         for function, ending in enumerate(endings):
             cells = tuple(self.failed[function])
             zeros = None if cells else _zeros(turns[function], start[function, 0], stop[function, -1], ending)
             counts.append(Count(zeros, cells))
-        return Counting(tuple(counts), np.append(lower, upper[-1]), self.evaluations)
+        return Counting(tuple(counts), edges, self.evaluations)
+
+    def _edges(self, lower: FloatArray, upper: FloatArray) -> FloatArray:
+        """Edges of all cells, also of those still open when the last function failed: a later count begins there."""
+        starts = np.sort(np.concatenate([lower, self.still_open[0]]))
+        return np.append(starts, max(cells.max(initial=0.0) for cells in (upper, self.still_open[1])))
 
 
 def exclude_zero(models: Models) -> tuple[BoolArray, FloatArray]:
@@ -184,10 +193,9 @@ def exclude_zero(models: Models) -> tuple[BoolArray, FloatArray]:
         if len(models.g):
             distance, radius = _distance_with_chord(c, models.d, models.g, radius)
         else:
-            length = (models.d * models.d.conj()).real
-            t = np.clip(-(models.d.conj() * c).real / np.where(length > 0.0, length, 1.0), -1.0, 1.0)
+            t = np.clip(-(c / np.where(models.d == 0.0, 1.0, models.d)).real, -1.0, 1.0)  # |d|^2 might underflow
             distance = np.abs(c + models.d * t)
-        slack = 8.0 * UNIT * (np.abs(c) + np.abs(models.d))
+        slack = 8.0 * UNIT * (np.abs(c) + np.abs(models.d) + np.abs(models.g).sum(axis=0))
         crowding = radius / np.abs(c)
         return radius * (1.0 + 8.0 * UNIT) + slack < distance, crowding
 
@@ -206,8 +214,9 @@ def _distance_with_chord(
     radius = radius + size.sum(axis=0) - size.max(axis=0)
     corners = [c + i * d + k * longest for i in (-1.0, 1.0) for k in (-1.0, 1.0)]
     best = np.full(c.shape, -np.inf)
-    for direction in [c, 1j * d, 1j * longest, *corners]:
-        n = direction / np.abs(direction)
+    for direction in [c, 1j * d, 1j * longest, *corners]:  # one too short has no accurate normal: passed over
+        length = np.abs(direction)
+        n = np.where(length > TINIEST, direction / length, np.nan)
         bound = np.abs((n.conj() * c).real) - np.abs((n.conj() * d).real) - np.abs((n.conj() * longest).real)
         best = np.fmax(best, bound)
     return best, radius
@@ -230,18 +239,18 @@ def _split(lower: FloatArray, upper: FloatArray, crowding: FloatArray) -> tuple[
 
 
 def _turns(
-    lower: FloatArray, upper: FloatArray, start: ComplexArray, stop: ComplexArray, g: ComplexArray, lines: FloatArray
+    upper: FloatArray, start: ComplexArray, stop: ComplexArray, g: ComplexArray, lines: Sequence[FloatArray]
 ) -> FloatArray:
     """The angle by which each function turns from the first start to the last stop.
 
-    At a measured line the half chord is walked to its end and from the start of the next one: both stand-ins lie in the
-    convex set of their own cell and both stand for the value at the line.
+    At a line of a measured block its half chord is walked to its end and from the start of the next one: both stand-ins
+    lie in the convex set of their own cell and both stand for the value at the line. The chords of other blocks run on.
     """
     turn: FloatArray = np.angle(stop / start).sum(axis=1)
     if len(g) == 0:
         turn += np.angle(start[:, 1:] / stop[:, :-1]).sum(axis=1)
         return turn
-    at_line = np.isin(upper[:-1], lines)
+    at_line = np.array([np.isin(upper[:-1], own) for own in lines])[:, None, :]
     full_stop = stop[:, :-1] + np.where(at_line, g[..., :-1], 0.0).sum(axis=0)
     full_start = start[:, 1:] - np.where(at_line, g[..., 1:], 0.0).sum(axis=0)
     turn += np.angle(full_stop / stop[:, :-1]).sum(axis=1)

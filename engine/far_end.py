@@ -29,7 +29,7 @@ class FarEnd:
     def value(self) -> float:
         """b_0/a_0."""
         a, b = self.prompt
-        return float(b / a) if a else np.inf
+        return _double(b / a) if a else np.inf
 
     @property
     def limit(self) -> float | None:
@@ -135,4 +135,12 @@ def _first_failure(
 def _ratio(above: Fraction, below: Fraction) -> float:
     if below <= 0:
         return np.inf
-    return float(max(above, Fraction(0)) / below)
+    return _double(max(above, Fraction(0)) / below)
+
+
+def _double(value: Fraction) -> float:
+    """The nearest double, infinite beyond their range."""
+    try:
+        return float(value)
+    except OverflowError:
+        return np.inf if value > 0 else -np.inf

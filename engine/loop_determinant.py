@@ -137,7 +137,7 @@ def _merge(terms: Iterable[Term]) -> list[Term]:
 
 def _common(terms: Sequence[Term], movable: Sequence[Factor]) -> dict[Factor, int]:
     """The power of each movable factor that all terms hold."""
-    found = {factor: min(term.powers.get(factor, 0) for term in terms) for factor in movable}
+    found = {factor: min((term.powers.get(factor, 0) for term in terms), default=0) for factor in movable}
     return {factor: power for factor, power in found.items() if power > 0}
 
 

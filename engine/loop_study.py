@@ -88,9 +88,13 @@ def _study(
 
 
 def _complete_up_to(loop: OpenLoop, curve: SampledCurve) -> float:
-    """The factor below which all crossings are sampled: beyond the last sample |L| stays below its bounds there."""
-    tail = max(float(np.abs(curve.L[-1])), loop.infinity.largest_size())
-    return 1.0 / tail if tail > 0.0 else np.inf
+    """The factor below which all crossings are sampled: beyond the last sample |L| stays below its bounds there.
+
+    Where L keeps turning about a point left of -1, what is not sampled lies at factors below 1 only.
+    """
+    bound = loop.infinity.largest_size()
+    tail = max(float(np.abs(curve.L[-1])), bound)
+    return 1.0 / tail if tail > 0.0 and bound < 1.0 else np.inf
 
 
 def _changes_between(crossings: Sequence[NegativeCrossing], low: float, high: float) -> int:

@@ -20,7 +20,7 @@ from encircle.engine.loop_determinant import Term
 from encircle.engine.result import ComplexArray, FloatArray
 
 NEAR_ZERO = 1e-9  # where a limit at 0 is taken numerically: this part of the lowest feature
-DEEP_ZERO = 1e-32  # the same for irrational formulas, which approach their limit as slowly as a root of s
+DEEP_ZERO = (1e-32, 1e-16, 1e-9)  # the same for irrational formulas, whose limits are approached slowly
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,10 +54,10 @@ class OpenLoop:
         self._leads_of_terms = counter.leads(stage.part)
         terms = system.determinants[stage.part].terms
         weights = term_weights(system.determinants[stage.part], gains)
-        closing = np.array([stage.loop in term.cuts for term in terms])
-        self._weights = np.array([np.where(closing, 0.0, weights), np.where(closing, weights, 0.0)])
-        self.is_zero = not closing.any()
-        self.delayed = any(term.delay > 0 for term in terms)
+        self._closing = np.array([stage.loop in term.cuts for term in terms])
+        self._weights = np.array([np.where(self._closing, 0.0, weights), np.where(self._closing, weights, 0.0)])
+        self.is_zero = not self._closing.any()
+        self.delayed = any(term.delay > 0 for term in system.determinants[stage.part].far_terms)
         self.measured = bool(system.measured_in(stage.part))
         self.poles = self._axis_poles(terms)
         self.zero = self._at_zero(terms)
@@ -96,12 +96,12 @@ class OpenLoop:
         if any(isinstance(factor, IrrationalFactor) for term in terms for factor in term.powers):
             return self._numerical_end()
         power = np.array([term.powers.get(S, 0) for term in terms])
-        closing = self._weights[1] != 0.0
-        lowest_A, lowest_B = int(power[~closing].min()), int(power[closing].min())
+        lowest_A, lowest_B = int(power[~self._closing].min()), int(power[self._closing].min())
         tiny = NEAR_ZERO * self.system.lowest
         values, _ = self._models.at_points(np.array([tiny]))
         scale = (1j * tiny) ** power
-        plain = (values[:, 0] / scale).real
+        with np.errstate(invalid="ignore"):  # s^60 at tiny s is no double: such a value is only asked for its power
+            plain = (values[:, 0] / scale).real
         A = float(self._weights[0][power == lowest_A] @ plain[power == lowest_A])
         B = float(self._weights[1][power == lowest_B] @ plain[power == lowest_B])
         if A == 0.0:  # the lowest powers cancel: a pole of the open loop at 0 that belongs to no single block
@@ -110,12 +110,17 @@ class OpenLoop:
 
     def _numerical_end(self) -> NearEnd:
         """By value and slope far below all features; powers of s are multiples of 1/64 for all practical formulas."""
-        tiny = DEEP_ZERO * self.system.lowest
-        L, slope = self.at(np.array([tiny]))
-        found = float((tiny * slope[0] / L[0]).real)
-        rounded = round(found * 64.0) / 64.0
-        order = rounded if abs(found - rounded) < 1e-6 else found
-        return NearEnd(float((L[0] / (1j * tiny) ** order).real), order)
+        tiny = np.array(DEEP_ZERO) * self.system.lowest
+        L, slope = self.at(tiny)
+        with np.errstate(all="ignore"):
+            orders = (tiny * slope / L).real
+        usable = np.flatnonzero(np.isfinite(orders))
+        if not len(usable):
+            return NearEnd(np.nan, -1.0)
+        i = usable[0]
+        rounded = round(orders[i] * 64.0) / 64.0
+        order = rounded if abs(orders[i] - rounded) < 1e-6 else float(orders[i])
+        return NearEnd(float((L[i] / (1j * tiny[i]) ** order).real), order)
 
     def _at_infinity(self, gains: Gains) -> FarEnd:
         """Leading powers of A and B, summed exactly."""

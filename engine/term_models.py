@@ -26,6 +26,7 @@ from numpy.typing import NDArray
 from encircle.engine.coprime_factors import Factor, Powers
 from encircle.engine.factor_models import FactorModel
 from encircle.engine.grids import distinct
+from encircle.engine.measured_factor import MeasuredModel
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
@@ -33,6 +34,7 @@ from encircle.engine.sections import Sections, sections
 
 SLACK = 8.0 * UNIT  # charged per elementary complex operation; the worst measured is below 3 units
 TINIEST = 1e-280  # added to every radius against underflow
+LARGEST_EXPONENT = 1000.0  # binary exponent up to which a partial product surely stays within the doubles
 LARGEST_DELAY_TURN = 1.5  # rad per half cell, beyond which a dead time is replaced by the unit disc
 ONE = Polynomial((Fraction(1),))  # stands in a product without factors
 REMAINDER_SCALE = 1.0  # tests put 0.5 here and must then see containment fail
@@ -68,7 +70,7 @@ class Models:
             return self._combine(weights)
 
     def _combine(self, weights: FloatArray) -> Models:
-        size = np.abs(weights)
+        size = np.abs(weights) + TINIEST  # a weight may have underflowed
         bands = np.abs(self.g).sum(axis=0) + np.abs(self.u).sum(axis=0)
         total = size @ (np.abs(self.v) + np.abs(self.d) + np.abs(self.e) + bands)
         slack = (weights.shape[1] + 4) * SLACK
@@ -135,7 +137,9 @@ class TermModels:
         self._some_delays = distinct(self.delays)
         self._delay_place = np.searchsorted(self._some_delays, self.delays)
         self._delta = np.array([_combined_delta(powers, found) for powers, _ in terms])
+        self._longest = float(np.abs(self._layout.exponents).sum(axis=1).max(initial=0.0))
         self._slack = (np.abs(self._layout.exponents).sum(axis=1) + 12.0) * SLACK
+        self.lines = tuple(model.lines for model in self._others if isinstance(model, MeasuredModel))
         self._measured = [count + i for i, model in enumerate(self._others) if model.measured]
         self._measured_power = self._layout.exponents[:, self._measured].T  # (m, terms)
 
@@ -160,7 +164,7 @@ class TermModels:
             for i, model in enumerate(self._others, start=count):
                 v[i], change = model.at_points(omega)
                 slope[i] = np.where(v[i] == 0.0, 0.0, change / v[i])
-            V: ComplexArray = self._reduce(v, np.reciprocal(v))
+            V: ComplexArray = self._values(v, np.reciprocal(v))
             relative = _real_times(self._layout.exponents, slope)
             if self._some_delays[-1] > 0.0:
                 V *= np.exp(-1j * np.outer(self._some_delays, omega))[self._delay_place]
@@ -202,7 +206,7 @@ class TermModels:
         size_a, size_b = np.abs(a), np.abs(b)
         reach = size_a + size_b + factors.eps
         room = np.where(reach < 1.0, 1.0 - reach, 0.0)  # reciprocal inf where nothing is proved
-        V = self._reduce(v, 1.0 / v)
+        V = self._values(v, 1.0 / v)
         X = self._reduce(1.0 + reach, 1.0 / room)
         A = _real_times(exponents, a)
         B = _real_times(exponents, b - 0.5 * a * a)
@@ -219,17 +223,19 @@ class TermModels:
         tail = X - 1.0 - E1 - (E2 + 0.5 * E1 * E1)
         slack = self._slack[:, None] + 3.0 * UNIT * self.delays[:, None] * w
         size_V = np.abs(V)
-        r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINIEST
+        r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINIEST * X  # V may have underflowed
+        difference: FloatArray | float = 0.0
         if self._delta.any():
-            r += self._delta[:, None] * self._reduce(factors.size, 1.0 / (np.abs(v) * room))
+            difference = self._delta[:, None] * self._values(factors.size, 1.0 / (np.abs(v) * room))
+            r += difference
         g = u = np.zeros((0, *V.shape), complex)
         if len(chords):
             g, u, whole, spread = self._with_bands(V, X, chords, loose)
             r = r * whole + spread
-            X = X * whole
+            X, difference = X * whole, difference * whole
         d, e = V * A, V * (B + 0.5 * A * A)
         if fast.any():
-            r = np.where(fast, size_V * X * (1.0 + slack) + TINIEST, r)
+            r = np.where(fast, size_V * X * (1.0 + slack) + difference + TINIEST * X, r)
             g, u = np.where(fast, 0.0, g), np.where(fast, 0.0, u)
             V, d, e = (np.where(fast, 0.0, part) for part in (V, d, e))
         return Models(V, d, e, r, g, u)
@@ -255,6 +261,28 @@ class TermModels:
         gathered = np.concatenate([values, reciprocals])[self._layout.chosen]
         product: NumericArray = np.multiply.reduceat(gathered, self._layout.starts, axis=0)
         return product
+
+    def _values(self, values: NumericArray, reciprocals: NumericArray) -> NumericArray:
+        """As ``_reduce``, for factors of which some may multiply to less than the smallest double though all do not."""
+        bits = np.abs(np.log2(np.abs(values)))
+        if bits.max(initial=0.0) * self._longest <= LARGEST_EXPONENT:
+            return self._reduce(values, reciprocals)
+        if (np.abs(self._layout.exponents) @ bits).max() <= LARGEST_EXPONENT:
+            return self._reduce(values, reciprocals)
+        gathered = np.concatenate([values, reciprocals])[self._layout.chosen]
+        return _scaled_product(gathered, self._layout.starts)
+
+
+def _scaled_product(gathered: NumericArray, starts: NDArray[np.intp]) -> NumericArray:
+    """Products through mantissas and binary exponents; NaN where even the mantissas leave the range of doubles."""
+    _, exponent = np.frexp(np.abs(gathered))
+    mantissa = np.multiply.reduceat(gathered * np.ldexp(1.0, -exponent), starts, axis=0)
+    total = np.add.reduceat(exponent, starts, axis=0)
+    kept = (np.abs(mantissa) > TINIEST) | np.logical_or.reduceat(gathered == 0.0, starts, axis=0)
+    product: NumericArray = np.where(kept, mantissa, np.nan)
+    for part in (product.real, product.imag) if np.iscomplexobj(product) else (product,):
+        np.ldexp(part, total, out=part)
+    return product
 
 
 def centres_and_halves(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -1,0 +1,119 @@
+"""Strange but valid diagrams that once led the count or the ranges astray; expected values in closed form."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+from single_loop_files import assert_consistent, opened
+
+from encircle.engine import Project, ProjectError
+from encircle.engine.encirclement import Ending, count_zeros, exclude_zero
+from encircle.engine.result import FloatArray, GainRange, LoopResult
+from encircle.engine.term_models import Models
+
+
+def project(folder: Path, blocks: str, output: str, gain: float = 1.0, more: str = "") -> Project:
+    """One loop round ``output``, an expression of the signal e."""
+    text = f"""
+format = 1
+frequency_unit = "rad/s"
+inputs = ["r"]
+{blocks}
+[signals]
+e = "r - y"
+y = "{output}"
+{more}
+[[loops]]
+name = "loop"
+cut = "e"
+gain = {gain!r}
+"""
+    return opened(text, folder)
+
+
+def formula_loop(folder: Path, formula: str, keys: str = "", gain: float = 1.0) -> LoopResult:
+    """The only loop of L = gain * formula."""
+    block = f'[blocks.P]\nformula = "{formula}"\n{keys}'
+    loop = project(folder, block, "P*e", gain).loop("loop")
+    assert_consistent(loop)
+    return loop
+
+
+@pytest.mark.parametrize("corner", [1e-8, 1.0, 1e8])
+def test_high_powers_at_low_frequencies_do_not_underflow(tmp_path: Path, corner: float) -> None:
+    """K (s/(s + a))^60 = -1 has the roots a r/(1 - r), r = (-1/K)^(1/60); s^60 at s = a = 1e-8 is no double."""
+    K = 1.5
+    r = K ** (-1 / 60) * np.exp(1j * np.pi * (2 * np.arange(60) + 1) / 60)
+    loop = formula_loop(tmp_path, "K*(s/(s + a))^60", f"K = {K}\na = {corner!r}")
+    assert loop.unstable_poles_after == np.sum((r / (1 - r)).real > 0)
+
+
+def test_values_whose_squares_underflow_are_not_shown_to_exclude_zero() -> None:
+    """The segment from -1e-170 to 3e-170 holds 0 although the square of its length is no double."""
+    disc = np.zeros((1, 1))
+    none = np.zeros((0, 1, 1), complex)
+    models = Models(disc + 1e-170 + 0j, disc + 2e-170 + 0j, disc + 0j, disc + 1e-280, none, none)
+    assert not exclude_zero(models)[0].any()
+
+
+def test_edges_for_a_later_count_cover_the_whole_axis() -> None:
+    """s (s^2 + 1) fails at j while cells at 0 are still being divided: those must not be lost."""
+
+    def enclose(lower: FloatArray, upper: FloatArray) -> Models:
+        w, h = 0.5 * (lower + upper), 0.5 * (upper - lower)
+        v, d, e = 1j * w * (1 - w * w), 1j * h * (1 - 3 * w * w), -3j * w * h * h
+        none = np.zeros((0, 1, len(w)), complex)
+        return Models(v[None], d[None], e[None], (h**3 + 1e-280)[None], none, none)
+
+    counting = count_zeros(enclose, [Ending(2.0, 1.0, 3.0)], np.array([0.0, 0.5, 2.0]), (), 1e-6)
+    assert counting.counts[0].zeros is None
+    assert counting.edges[0] == 0.0
+    assert counting.edges[-1] == 2.0
+
+
+def test_ranges_of_a_loop_that_turns_for_ever_left_of_minus_one(tmp_path: Path) -> None:
+    """L(0) = -1/2, so a real pole crosses 0 at the factor 2; at infinity L circles -2 with radius 1/2, which stays
+    clear of -1/g for g > 2/3.
+    """
+    block = '[blocks.P]\nformula = "-2*(s + 0.5)/(s + 1) + 0.5*exp(-s)"'
+    loop = project(tmp_path, block, "P*e").loop("loop")
+    below, above = loop.gain_ranges
+    assert (below.lower, below.upper, above.lower) == pytest.approx((2 / 3, 2.0, 2.0))
+    assert above.upper is None
+    assert abs(below.unstable_poles - above.unstable_poles) == 1
+
+
+def test_a_held_signal_counts_as_dead_time(tmp_path: Path) -> None:
+    """(1 - exp(-T s))/(T s) turns for ever: the list of ranges stops after the second change above 1."""
+    loop = formula_loop(tmp_path, "3*(1 - exp(-T*s))/(T*s)/(s + 1)", "T = 0.1")
+    assert len([r for r in loop.gain_ranges if r.lower > 1.0]) == 1
+    assert loop.gain_ranges[-1].upper is not None
+
+
+def test_no_range_has_fewer_unstable_poles_than_none(tmp_path: Path) -> None:
+    """1/(sqrt(s) - 1) has a pole at 1 that is not stated; from k = 1 on the count would be -1."""
+    loop = formula_loop(tmp_path, "0.5/(sqrt(s) - 1)", "unstable_poles = 0")
+    assert loop.gain_ranges == (GainRange(0.0, pytest.approx(2.0), 0),)
+
+
+def test_feedback_whose_determinant_vanishes_is_refused_by_name(tmp_path: Path) -> None:
+    blocks = '[blocks.P]\nformula = "1/(s + 1)"\n[blocks.two]\nformula = "2"'
+    with pytest.raises(ProjectError, match="`x`"):
+        project(tmp_path, blocks, "P*x", more='x = "0.5*two*x + e"')
+
+
+def test_gains_that_multiply_to_less_than_any_double(tmp_path: Path) -> None:
+    blocks = '[blocks.P]\nformula = "1e-300/(s + 1)"\n[blocks.Q]\nformula = "1e-300/(s + 2)"'
+    loop = project(tmp_path, blocks, "P*Q*e").loop("loop")
+    assert_consistent(loop)
+    assert loop.verdict == "stable"
+
+
+def test_many_integrators_beside_an_irrational_block(tmp_path: Path) -> None:
+    """s^12 = -(1 + 1e-6 s)^(-1/2): the twelve roots of s^12 = -1 hardly move, and six of them lie right."""
+    blocks = '[blocks.P]\nformula = "1/sqrt(1 + 1e-6*s)"\nunstable_poles = 0\n[blocks.I]\nformula = "1/s^12"'
+    loop = project(tmp_path, blocks, "P*I*e").loop("loop")
+    assert_consistent(loop)
+    assert loop.unstable_poles_after == 6
