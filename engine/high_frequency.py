@@ -29,6 +29,7 @@ from encircle.engine.sections import sections
 
 DOUBLINGS = 120
 MOST_ANSWERS = 5_000  # endings kept, one for each setting of the factors
+CLOSING = 0.1  # relative disc at the largest radius below which a product has a lead of its own
 BEYOND = 1e300  # stands for the logarithm of infinity: finite, so that 0 times it is 0
 
 
@@ -106,8 +107,8 @@ class FarField:
 
     @property
     def leads(self) -> list[tuple[Fraction, Fraction]]:
-        """Lead (0 where only a bound is known) and order of each product."""
-        return [(term.lead, term.order) for term in self._asymptotes]
+        """Lead and order of each product; lead 0 where only a bound is known or the disc round the lead does not close."""
+        return [(term.lead if term.rho[-1] < CLOSING else Fraction(0), term.order) for term in self._asymptotes]
 
     def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:
         """The ending of sum_i factors[i] * product_i on the smallest radius that serves, or why there is none."""

@@ -115,4 +115,4 @@ def _largest_complementary(loop: OpenLoop, curve: SampledCurve) -> tuple[float, 
         found.append((abs(near.value / (1.0 + near.value)) if near.order == 0 else 1.0, 0.0))
     found.append((loop.infinity.largest_complementary(), -np.inf))
     size, place = max(found)
-    return size, -place
+    return size, abs(place)
