@@ -105,18 +105,15 @@ class _Walk:
     def run(self, lower: FloatArray, upper: FloatArray) -> None:
         budget = FEWEST_EVALUATIONS + 8 * len(lower)
         while len(lower) and self.alive.any():
-            pieces = [self._level(lower[i : i + CHUNK], upper[i : i + CHUNK]) for i in range(0, len(lower), CHUNK)]
+            last = self.evaluations + len(lower) > budget
+            parts = [slice(i, i + CHUNK) for i in range(0, len(lower), CHUNK)]
+            pieces = [self._level(lower[part], upper[part], last) for part in parts]
             lower = np.concatenate([piece[0] for piece in pieces])
             upper = np.concatenate([piece[1] for piece in pieces])
-            if self.evaluations > budget and len(lower):
-                whole = OpenCell(float(lower.min()), float(upper.max()), Cause.BUDGET)
-                for function in np.flatnonzero(self.alive):
-                    self.failed[function].append(whole)
-                self.alive[:] = False
         self.still_open = lower, upper
 
-    def _level(self, lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """One evaluation; returns the cells of the next level."""
+    def _level(self, lower: FloatArray, upper: FloatArray, last: bool) -> tuple[FloatArray, FloatArray]:
+        """One evaluation; returns the cells of the next level, none if this is the ``last`` that the budget allows."""
         models = self.enclose(lower, upper)
         self.evaluations += len(lower)
         clear, crowding = exclude_zero(models)
@@ -130,6 +127,9 @@ class _Walk:
         if stuck.any():
             self._fail(lower, upper, ~clear & stuck, Cause.TOUCHES_ZERO)
             done |= stuck
+        if last:
+            self._give_up_on_budget(lower, upper, ~clear & ~done)
+            done[:] = True
         self._accept(models, lower, upper, done)
         return _split(lower[~done], upper[~done], crowding[:, ~done].max(axis=0, initial=0.0))
 
@@ -146,6 +146,13 @@ class _Walk:
             self._fail(lower, upper, hopeless, Cause.DATA)
             clear |= hopeless
             clear[~self.alive] = True
+
+    def _give_up_on_budget(self, lower: FloatArray, upper: FloatArray, still_open: BoolArray) -> None:
+        for function in np.flatnonzero(still_open.any(axis=1)):
+            cells = still_open[function]
+            hull = OpenCell(float(lower[cells].min()), float(upper[cells].max()), Cause.BUDGET)
+            self.failed[function].append(hull)
+            self.alive[function] = False
 
     def _fail(self, lower: FloatArray, upper: FloatArray, where: BoolArray, cause: Cause) -> None:
         for function, cell in zip(*np.nonzero(where), strict=True):

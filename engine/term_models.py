@@ -264,13 +264,17 @@ class TermModels:
 
     def _values(self, values: NumericArray, reciprocals: NumericArray) -> NumericArray:
         """As ``_reduce``, for factors of which some may multiply to less than the smallest double though all do not."""
-        bits = np.abs(np.log2(np.abs(values)))
-        if bits.max(initial=0.0) * self._longest <= LARGEST_EXPONENT:
-            return self._reduce(values, reciprocals)
-        if (np.abs(self._layout.exponents) @ bits).max() <= LARGEST_EXPONENT:
-            return self._reduce(values, reciprocals)
-        gathered = np.concatenate([values, reciprocals])[self._layout.chosen]
-        return _scaled_product(gathered, self._layout.starts)
+        bits = np.log2(np.abs(values))
+        product = self._reduce(values, reciprocals)
+        if np.abs(bits).max(initial=0.0) * self._longest <= LARGEST_EXPONENT:
+            return product
+        above, below = np.maximum(bits, 0.0), np.maximum(-bits, 0.0)
+        up, down = np.maximum(self._layout.exponents, 0.0), np.maximum(-self._layout.exponents, 0.0)
+        extent = np.maximum(up @ above + down @ below, up @ below + down @ above)  # of any partial product
+        far = np.flatnonzero(~(extent.max(axis=0) <= LARGEST_EXPONENT))
+        gathered = np.concatenate([values[:, far], reciprocals[:, far]])[self._layout.chosen]
+        product[:, far] = _scaled_product(gathered, self._layout.starts)
+        return product
 
 
 def _scaled_product(gathered: NumericArray, starts: NDArray[np.intp]) -> NumericArray:

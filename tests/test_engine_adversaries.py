@@ -9,7 +9,7 @@ import pytest
 from single_loop_files import assert_consistent, opened
 
 from encircle.engine import Project, ProjectError
-from encircle.engine.encirclement import Ending, count_zeros, exclude_zero
+from encircle.engine.encirclement import Cause, Ending, count_zeros, exclude_zero
 from encircle.engine.result import FloatArray, GainRange, LoopResult
 from encircle.engine.term_models import Models
 
@@ -71,6 +71,22 @@ def test_edges_for_a_later_count_cover_the_whole_axis() -> None:
     assert counting.counts[0].zeros is None
     assert counting.edges[0] == 0.0
     assert counting.edges[-1] == 2.0
+
+
+def test_a_function_that_spends_the_budget_leaves_the_others_their_counts(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Nothing is known of the first function; the second is 1."""
+    monkeypatch.setattr("encircle.engine.encirclement.FEWEST_EVALUATIONS", 1000)
+
+    def enclose(lower: FloatArray, upper: FloatArray) -> Models:
+        one, zero = np.ones((2, len(lower)), complex), np.zeros((2, len(lower)), complex)
+        radius = np.array([np.full(len(lower), np.inf), np.zeros(len(lower))])
+        return Models(
+            one, zero, zero, radius, np.zeros((0, 2, len(lower)), complex), np.zeros((0, 2, len(lower)), complex)
+        )
+
+    counting = count_zeros(enclose, [Ending(2.0, 1.0, 0.0)] * 2, np.array([0.0, 0.5, 2.0]), (), 1.0)
+    assert [count.zeros for count in counting.counts] == [None, 0]
+    assert counting.counts[0].open_cells[0].cause is Cause.BUDGET
 
 
 def test_ranges_of_a_loop_that_turns_for_ever_left_of_minus_one(tmp_path: Path) -> None:
