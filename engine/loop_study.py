@@ -18,6 +18,7 @@ from encircle.engine.sampled_curve import SampledCurve, sample
 DENSITIES = (1, 4, 16)
 # With dead time L is followed down to these sizes until two changes of Z are found
 SMALLEST = (0.05, 1e-3, 1e-6)
+LONGEST_SEARCH = 5_000  # samples after which no further changes are looked for
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,7 +72,8 @@ def _study(
         curve = sample_loop(counter, loop, smallest, density)
         crossings = negative_crossings(loop, curve)
         complete = _complete_up_to(loop, curve)
-        if not loop.endless or _changes_between(crossings, 1.0, complete) >= 2:
+        changes = _changes_between(crossings, 1.0, complete)
+        if not loop.endless or changes >= 2 or len(curve.omega) > LONGEST_SEARCH:
             break
     arcs = unbounded_arcs(loop, curve)
     explained = windings is None or _turns(crossings, arcs) == windings
