@@ -107,7 +107,7 @@ class FarField:
 
     @property
     def leads(self) -> list[tuple[Fraction, Fraction]]:
-        """Lead and order of each product; lead 0 where only a bound is known or the disc round the lead does not close."""
+        """Lead and order of each product; lead 0 where only a bound is known or the disc round it does not close."""
         return [(term.lead if term.rho[-1] < CLOSING else Fraction(0), term.order) for term in self._asymptotes]
 
     def ending(self, factors: Sequence[Fraction]) -> Ending | FarCause:

@@ -64,7 +64,7 @@ def exact_product(powers: Powers, delay: Fraction, s: mpmath.mpc) -> mpmath.mpc:
 
 
 def random_section(rng: np.random.Generator) -> Polynomial:
-    """First or second order, damping from 1e-5 to 2, either sign, frequencies over six decades; decimals, not doubles."""
+    """First or second order, damping 1e-5 to 2, either sign, frequencies over six decades; decimals, not doubles."""
     natural = Fraction(f"{10 ** rng.uniform(-3, 3):.5g}")
     if rng.random() < 0.4:
         return Polynomial((natural * int(rng.choice([-1, 1])), Fraction(1)))
