@@ -42,7 +42,9 @@ class MeasuredFactor:
 
 @dataclass(frozen=True, slots=True)
 class IrrationalFactor:
-    """An irrational formula without its power of s at 0 (``part`` "regular"), or (s + a)^-p (``part`` "normaliser")."""
+    """An irrational formula without its power of s at 0 (``part`` "regular"), or a part of what stands in for a pole
+    there ("shifted", "root").
+    """
 
     block: str
     part: str
@@ -234,10 +236,3 @@ def _first_order(corner: float) -> Polynomial:
 
 def _second_order(natural: float) -> Polynomial:
     return Polynomial((Fraction(natural) ** 2, Fraction(2 * SURROGATE_DAMPING * natural), Fraction(1)))
-
-
-def kernel_coefficients(order: int, terms: int) -> list[Fraction]:
-    """Maclaurin coefficients of psi_k: (-1)^m k! / (m + k)!."""
-    return [Fraction((-1) ** m * factorial(order), factorial(m + order)) for m in range(terms)]
-
-

@@ -74,10 +74,6 @@ class Counter:
         """Edges of the cells on which a part was last counted, rad/s."""
         return self._last_edges.get(key, np.empty(0))
 
-    def well_posed(self, key: PartKey, gains: Gains) -> bool:
-        """Whether the determinant keeps its leading power at infinity (no algebraic loop without a solution)."""
-        return self.ending(key, gains) is not FarCause.ILL_POSED
-
     def ending(self, key: PartKey, gains: Gains) -> Ending | FarCause:
         """Behaviour of a part's determinant at infinity."""
         determinant = self.system.determinants[key]

@@ -2,7 +2,8 @@
 
 psi_k(z) = k! phi_k(-z) with phi_k(y) = sum_m y^m/(m + k)!; phi_k' = phi_k - k phi_(k+1) and y phi_k = phi_(k-1) -
 1/(k-1)! (the phi functions of exponential integrators: M. Hochbruck, A. Ostermann, Acta Numerica 19 (2010) 209-286;
-from memory). On the axis |psi_k'''| <= 6 / ((k + 1)(k + 2)(k + 3)), the third moment of the density k (1 - x)^(k-1).
+from memory). On the axis |psi_k'''| <= 6 / ((k + 1)(k + 2)(k + 3)), the third moment of the density k (1 - x)^(k-1),
+and |psi_k(j theta)| <= min(1, 2 k/theta) by the recurrence with |phi_(k-1)| <= 1/(k-1)!.
 """
 
 from __future__ import annotations
@@ -17,6 +18,7 @@ from encircle.engine.result import ComplexArray, FloatArray
 from encircle.engine.rounding import UNIT
 
 SERIES_TERMS = 80
+OFF_CENTRE = 1024.0  # a disc round 0 is given by a value this much smaller than its radius: values must not vanish
 
 
 class DelayKernelModel:
@@ -29,7 +31,7 @@ class DelayKernelModel:
         self._delay = float(kernel.delay)
 
     def on_cells(self, w: FloatArray, h: FloatArray) -> RelativeModel:
-        """Second-order expansion in theta = T (w + h t)."""
+        """Second-order expansion in theta = T (w + h t), or the disc round 0 where min(1, 2 k/theta) says more."""
         k = self._order
         theta, step = self._delay * w, self._delay * h * (1.0 + 4.0 * UNIT)
         value, slope, bend, error = self._derivatives(theta)
@@ -38,7 +40,11 @@ class DelayKernelModel:
         v = never_zero(value, np.ones_like(w))
         moved = np.abs(v - value)
         size = np.abs(v)
-        return v, -1j * step * slope / v, -0.5 * step * step * bend / v, (error + remainder + moved) / size
+        a, b, eps = -1j * step * slope / v, -0.5 * step * step * bend / v, (error + remainder + moved) / size
+        bound = np.minimum(1.0, 2.0 * k / np.maximum((theta - step) * (1.0 - 16.0 * UNIT), 2.0 * k))
+        loose = ~(size * (np.abs(a) + np.abs(b) + eps) <= bound)
+        v = np.where(loose, bound / OFF_CENTRE + 0j, v)
+        return v, np.where(loose, 0.0, a), np.where(loose, 0.0, b), np.where(loose, OFF_CENTRE + 1.001, eps)
 
     def band(self, w: FloatArray, h: FloatArray) -> tuple[ComplexArray, FloatArray]:
         """No band: the kernel is known."""

@@ -89,14 +89,14 @@ def _above_last_line(model: MeasuredModel, unit: float) -> UndecidedStretch:
 
 
 def _cell(counter: Counter, key: PartKey, gains: Gains, cell: OpenCell, unit: float) -> list[UndecidedStretch]:
-    measured = counter.system.measured_in(key)
     centre = 0.5 * (cell.lower + cell.upper)
     if cell.cause is Cause.BUDGET:
         why = "the count ran out of its budget of cells before this stretch was decided"
         return [UndecidedStretch(cell.lower / unit, cell.upper / unit, why)]
-    if cell.cause is Cause.DATA and measured:
+    banded = [model for model in counter.system.measured_in(key) if _has_band(model, centre)]
+    if cell.cause is Cause.DATA and banded:
         ratio = _room(counter, key, gains, centre)
-        return [_gap(model, centre, ratio, unit) for model in measured if _has_band(model, centre)]
+        return [_gap(model, centre, ratio, unit) for model in banded]
     at = frequency_text(centre, unit) if cell.lower > 0.0 else frequency_text(0.0, unit)
     lower, upper = cell.lower / unit, cell.upper / unit
     return [UndecidedStretch(lower, upper, ON_THE_AXIS.format(at=at))]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
 from pathlib import Path
 
 import numpy as np
@@ -9,6 +10,8 @@ import pytest
 from single_loop_files import assert_consistent, opened
 
 from encircle.engine import Project, ProjectError
+from encircle.engine.coprime_factors import DelayKernel
+from encircle.engine.delay_kernel import DelayKernelModel
 from encircle.engine.encirclement import Cause, Ending, count_zeros, exclude_zero
 from encircle.engine.result import FloatArray, GainRange, LoopResult
 from encircle.engine.term_models import Models
@@ -106,6 +109,45 @@ def test_a_held_signal_counts_as_dead_time(tmp_path: Path) -> None:
     loop = formula_loop(tmp_path, "3*(1 - exp(-T*s))/(T*s)/(s + 1)", "T = 0.1")
     assert len([r for r in loop.gain_ranges if r.lower > 1.0]) == 1
     assert loop.gain_ranges[-1].upper is not None
+
+
+@pytest.mark.parametrize("order", [1, 2, 3])
+def test_kernels_on_wide_cells(order: int) -> None:
+    """psi_1 = (1 - exp(-z))/z, psi_(k+1) = (1 - psi_k) (k + 1)/z, from the definition of the phi functions."""
+    model = DelayKernelModel(DelayKernel(order, Fraction(1)))
+    rng = np.random.default_rng(4)
+    w = 10.0 ** rng.uniform(0.0, 9.0, 400)
+    h = w * 10.0 ** rng.uniform(-9.0, -0.01, 400)
+    v, a, b, eps = model.on_cells(w, h)
+    for t in (-1.0, -0.3, 0.5, 1.0):
+        z = 1j * (w + h * t)
+        psi = (1.0 - np.exp(-z)) / z
+        for k in range(1, order):
+            psi = (k + 1) * (1.0 - psi) / z
+        assert np.all(np.abs(psi - v * (1.0 + a * t + b * t * t)) <= np.abs(v) * eps * (1.0 + 1e-9) + 1e-9 / np.abs(z))
+    assert np.all(np.abs(v) * (1.0 + eps) <= 4.0 * order / np.maximum(w - h, order) + 1.0 * (w - h < 10.0))
+
+
+def test_a_held_measured_response(tmp_path: Path) -> None:
+    """A measured lag behind a hold: nothing at high frequency comes near -1."""
+    w = np.geomspace(0.01, 100.0, 200)
+    H = 1.0 / (1j * w + 1.0)
+    lines = [f"{a!r},{b!r},{c!r}" for a, b, c in zip(w.tolist(), H.real.tolist(), H.imag.tolist(), strict=True)]
+    (tmp_path / "lag.csv").write_text("\n".join(["frequency_rad_s,real,imag", *lines]), encoding="utf-8")
+    blocks = """[blocks.P]
+measured = "lag.csv"
+unstable_poles = 0
+integrators = 0
+roll_off = 1
+[blocks.hold]
+formula = "(1 - exp(-0.1*s))/(0.1*s)"
+"""
+    loop = project(tmp_path, blocks, "hold*P*e").loop("loop")
+    assert_consistent(loop)
+    assert loop.verdict == "stable"
+    assert loop.margins is not None
+    assert loop.margins.gain_increase is not None
+    assert 20.0 < loop.margins.gain_increase.factor < 60.0
 
 
 def test_no_range_has_fewer_unstable_poles_than_none(tmp_path: Path) -> None:
