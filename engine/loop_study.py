@@ -83,10 +83,18 @@ def _study(
     def count(factors: Sequence[float]) -> list[int | None]:
         return counter.count_at_factors(loop.stage.part, loop.stage.loop, gains, factors)
 
-    reach = Reach(*loop.infinity.factor_limits(), complete if loop.endless else None)
-    ranges = gain_ranges(crossings, reach, count, unstable, strict)
+    ranges = gain_ranges(crossings, _reach(loop, crossings, complete), count, unstable, strict)
     found = margins(loop, curve, ranges, unit)
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, found, complete=explained)
+
+
+def _reach(loop: OpenLoop, crossings: Sequence[NegativeCrossing], complete: float) -> Reach:
+    """How far the ranges go; where L grows for ever while it turns, they start at the second change below 1."""
+    lower, upper = loop.infinity.factor_limits()
+    if loop.endless and loop.infinity.order > 0.0:
+        changes = sorted(-1.0 / c.value for c in crossings if c.turns != 0 and c.value < -1.0)
+        lower = changes[-2] if len(changes) > 1 else None
+    return Reach(lower, upper, complete if loop.endless else None)
 
 
 def _complete_up_to(loop: OpenLoop, curve: SampledCurve) -> float:

@@ -93,7 +93,7 @@ def _ends(loop: OpenLoop, smallest: float) -> tuple[float, float]:
     L, slope = loop.at(above)
     far = loop.infinity
     if loop.endless:
-        settled = (np.abs(L) < smallest) | (far.order == 0)
+        settled = (np.abs(L) < smallest) | (np.abs(L) > 1.0 / smallest) & (far.order > 0.0) | (far.order == 0)
     elif loop.delayed and far.value != 0.0:
         settled = _near_asymptote(above, L, far) & _beyond_one(L, -far.order)
     else:

@@ -104,6 +104,23 @@ def test_ranges_of_a_loop_that_turns_for_ever_left_of_minus_one(tmp_path: Path) 
     assert abs(below.unstable_poles - above.unstable_poles) == 1
 
 
+def test_ranges_of_a_loop_that_grows_for_ever_while_it_turns(tmp_path: Path) -> None:
+    """0.1 (s^2 + s + 1) + s exp(-s) crosses the negative axis for ever, ever further left; Z by plain sampling of
+    F(j w)/(j w + 1)^2, which tends to 1/10.
+    """
+    block = '[blocks.P]\nformula = "0.1*(s^2 + s + 1) + s*exp(-s)"'
+    loop = project(tmp_path, block, "P*e").loop("loop")
+    s = 1j * np.linspace(-2000.0, 2000.0, 2_000_001)
+
+    def zeros(factor: float) -> int:
+        angle = np.unwrap(np.angle((1.0 + factor * (0.1 * (s * s + s + 1.0) + s * np.exp(-s))) / (s + 1.0) ** 2))
+        return round((angle[0] - angle[-1]) / (2.0 * np.pi))
+
+    assert loop.unstable_poles_after == zeros(1.0)
+    assert [r.unstable_poles for r in loop.gain_ranges] == [zeros(0.16), zeros(2.0)]
+    assert loop.gain_ranges[-1].upper is None
+
+
 def test_a_held_signal_counts_as_dead_time(tmp_path: Path) -> None:
     """(1 - exp(-T s))/(T s) turns for ever: the list of ranges stops after the second change above 1."""
     loop = formula_loop(tmp_path, "3*(1 - exp(-T*s))/(T*s)/(s + 1)", "T = 0.1")
