@@ -5,8 +5,9 @@ from __future__ import annotations
 import math
 import os
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
+from pathlib import Path
 
 import numpy as np
 
@@ -35,8 +36,10 @@ from encircle.engine.result import (
     MeasuredFile,
     Result,
 )
+from encircle.engine.text import one_line
 from encircle.engine.verdict import outcome
 from encircle.engine.version import VERSION
+from encircle.engine.well_posedness import loses_degree
 
 Address = tuple[int, tuple[Fraction, ...]]
 MOST_RESULTS = 200  # loop results and curves kept, each
@@ -55,12 +58,22 @@ class _Shared:
     curves: Memory[Address, LoopCurve] = field(default_factory=lambda: Memory(MOST_RESULTS))
 
 
+def _decimal(gain: float) -> Fraction:
+    """A gain as the shortest decimal that stands for it: 0.1 is one tenth, as it was written."""
+    return Fraction(repr(float(gain)))
+
+
 def open_project(path: str | os.PathLike[str]) -> Project:
     """Read a project file and compile its diagram.
 
-    Raises ProjectError listing every mistake found.
+    Raises ProjectError listing every mistake found, each sentence naming the file.
     """
-    return Project(read_project(path))
+    declarations = read_project(path)
+    try:
+        return Project(declarations)
+    except ProjectError as error:
+        name = one_line(Path(declarations.file).name)
+        raise ProjectError(*(replace(p, message=f"{name}: {p.message}") for p in error.problems)) from None
 
 
 class Project:
@@ -70,7 +83,7 @@ class Project:
         system = compile_system(declarations)
         warnings = (*declarations.warnings, *algebra_warnings(system))
         self._shared = _Shared(system, Counter(system), warnings)
-        self._gains = tuple(Fraction(loop.gain) for loop in declarations.loops)
+        self._gains = tuple(_decimal(loop.gain) for loop in declarations.loops)
         self._refuse_ill_posed()
 
     @property
@@ -111,7 +124,7 @@ class Project:
         position = self._position(name)
         changed = object.__new__(Project)
         changed._shared = self._shared
-        changed._gains = (*self._gains[:position], Fraction(gain), *self._gains[position + 1 :])
+        changed._gains = (*self._gains[:position], _decimal(gain), *self._gains[position + 1 :])
         return changed
 
     def loop(self, name: str) -> LoopResult:
@@ -219,7 +232,8 @@ class Project:
         """Refuse algebraic loops without a solution at any stage, naming the signals of the cycle."""
         system, counter = self._shared.system, self._shared.counter
         for key in system.order.parts():
-            if counter.ending(key, self._gains) is FarCause.ILL_POSED:
+            determinant = system.determinants[key]
+            if counter.ending(key, self._gains) is FarCause.ILL_POSED and loses_degree(determinant, self._gains):
                 signals = [system.diagram.homes[node] for node in sorted(key[0]) if node < len(system.diagram.blocks)]
                 named = ", ".join(f"`{signal}`" for signal in dict.fromkeys(signals))
                 message = (

@@ -63,5 +63,9 @@ def _difference_upper(polynomial: Polynomial, rows: FloatArray) -> float:
         product = product * Polynomial(tuple(Fraction(float(c)) for c in ascending))
         sizes = np.convolve(sizes, np.abs(ascending))
     residual = (polynomial - product).coefficients
-    ratios = [abs(float(e / Fraction(float(size)))) for e, size in zip(residual, sizes, strict=False) if e]
+    ratios = [
+        abs(float(e / Fraction(float(size)))) if size > 0.0 else np.inf  # a size below all doubles proves nothing
+        for e, size in zip(residual, sizes, strict=False)
+        if e
+    ]
     return max(ratios, default=0.0) * (1.0 + 4.0 * len(rows) * 8.0 * UNIT)

@@ -268,7 +268,7 @@ def _model_distance_lower(v: ComplexArray, d: ComplexArray, e: ComplexArray, r: 
 def _segment_distance_lower(c: ComplexArray, d: ComplexArray) -> FloatArray:
     """Distance of 0 to {c + d t, |t| <= 1}, rounded down: turned by -arg d the segment is parallel to the real axis."""
     length = np.abs(d)
-    turned = c * np.conj(np.where(length > 1e-290, d / length, 1.0))
+    turned = c * np.conj(np.where(length > 1e-290, d / np.maximum(length, 1e-290), 1.0))
     beyond = np.maximum(np.abs(turned.real) - length, 0.0)
     distance: FloatArray = np.hypot(beyond, turned.imag) * (1.0 - SLACK) - 3.0 * SLACK * (np.abs(c) + length) - TINY
     return distance

@@ -310,7 +310,10 @@ def _layout(terms: Sequence[Powers], places: Mapping[Factor, list[int]], factors
 
 
 def _combined_delta(powers: Powers, found: Mapping[Polynomial, Sections]) -> float:
-    """prod(1 + delta)^power - 1, rounded up."""
+    """prod(1 + delta)^power - 1, rounded up.
+
+    Only factors above the line have a delta: what stands below is of first or second order (``hurwitz_stand_ins``).
+    """
     total = 1.0
     for factor, power in powers.items():
         if isinstance(factor, Polynomial) and found[factor].delta > 0.0:

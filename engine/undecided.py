@@ -52,7 +52,10 @@ def _at_infinity(system: LoopSystem, key: PartKey, cause: FarCause, unit: float)
             "the dead times would move infinitely many poles across the axis; add roll-off to the loop"
         )
     elif cause is FarCause.ILL_POSED:
-        why = "1 + L tends to 0 at infinite frequency: put the dynamics that the devices have there into their blocks"
+        why = (
+            "the highest powers of the determinant cancel exactly at infinite frequency: join the blocks that cancel "
+            "into one, or put the dynamics that the devices have there into them"
+        )
     else:
         why = "the behaviour above the highest feature is not bounded well enough: a steeper roll_off would decide"
     return UndecidedStretch(system.highest / unit, None, why)

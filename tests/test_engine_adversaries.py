@@ -192,3 +192,29 @@ def test_many_integrators_beside_an_irrational_block(tmp_path: Path) -> None:
     loop = project(tmp_path, blocks, "P*I*e").loop("loop")
     assert_consistent(loop)
     assert loop.unstable_poles_after == 6
+
+
+@pytest.mark.parametrize("gain", [0.1, 0.3])
+def test_a_gain_is_the_decimal_that_was_written(gain: float, tmp_path: Path) -> None:
+    """-(10 s + 20)/(s + 1) times 0.1 tends to exactly -1 at infinity: no solution there; 0.3 has one."""
+    block = '[blocks.P]\nformula = "-10*(s + 2)/(s + 1)"'
+    if gain == 0.1:
+        with pytest.raises(ProjectError, match=r"project\.toml: .*1 \+ L = 0 at infinite frequency"):
+            project(tmp_path, block, "P*e", gain)
+    else:
+        assert project(tmp_path, block, "P*e", gain).loop("loop").unstable_poles_after == 0
+
+
+def test_paths_whose_highest_powers_cancel_are_undecided_not_refused(tmp_path: Path) -> None:
+    """s (s+2)/(s+3) - s (s+4)/(s+5) tends to 0, although each path grows: 1 + L has a solution at infinity."""
+    blocks = '[blocks.A]\nformula = "s*(s + 2)/(s + 3)"\n[blocks.B]\nformula = "s*(s + 4)/(s + 5)"'
+    loop = project(tmp_path, blocks, "A*e - B*e").loop("loop")
+    assert loop.verdict == "undecided"
+    assert "cancel exactly" in loop.undecided[0].why
+
+
+def test_uncut_feedback_without_a_solution_at_infinity_is_refused(tmp_path: Path) -> None:
+    """z = (s+2)/(s+1) z + e: 1 - 1 = 0 at infinity, and no cut opens it."""
+    blocks = '[blocks.A]\nformula = "(s + 2)/(s + 1)"\n[blocks.B]\nformula = "1/(s + 1)"'
+    with pytest.raises(ProjectError, match="feedback through"):
+        project(tmp_path, blocks, "B*z", more='z = "A*z + e"')
