@@ -3,63 +3,11 @@
 from __future__ import annotations
 
 import pytest
+from project_texts import REWINDER
 from single_loop_files import assert_consistent, opened
 
 from encircle.engine import Project
 from encircle.engine.result import AxisPole, Margins
-
-REWINDER = """
-format = 1
-title = "Rewinder drive"
-frequency_unit = "Hz"
-inputs = ["speed_command", "load_torque"]
-[band]
-from = 0.1
-to = 20000
-[parameters]
-kt = 0.41
-ke = 0.41
-[blocks.current_controller]
-formula = "kp + ki/s"
-kp = 8.0
-ki = 3200.0
-note = "gains as on the drive, 12 March"
-[blocks.amplifier]
-formula = "exp(-T*s) / (1 + tau*s)"
-T = 90e-6
-tau = 20e-6
-[blocks.coil]
-numerator = [1.0]
-denominator = [3.4e-3, 0.82]
-[blocks.rotor]
-formula = "1/(J*s)"
-J = 1.8e-3
-[blocks.speed_controller]
-formula = "kp + ki/s"
-kp = 0.35
-ki = 9.0
-[blocks.speed_filter]
-formula = "1/(1 + tf*s)"
-tf = 4e-4
-[signals]
-current_error   = "current_command - current"
-voltage         = "amplifier * current_controller * current_error"
-current         = "coil * (voltage - ke*speed)"
-speed           = "rotor * (kt*current - load_torque)"
-current_command = "speed_controller * speed_error"
-speed_error     = "speed_command - speed_filter*speed"
-[limits]
-gain_margin_db = 6
-phase_margin_deg = 45
-[[loops]]
-name = "current"
-cut = "current_error"
-[[loops]]
-name = "speed"
-cut = "speed_error"
-gain = 1.0
-limits = { phase_margin_deg = 50, modulus_margin = 0.5 }
-"""
 
 
 @pytest.fixture(scope="module")
