@@ -60,8 +60,8 @@ def _equal(system: LoopSystem) -> list[Problem]:
             listed = ", ".join(f"`{name}`" for name in names[:-1]) + f" and `{names[-1]}`"
             every = "both" if len(names) == 2 else "all"
             message = (
-                f"blocks {listed} {every} have the pole {_root_text(root)} rad/s: blocks are separate devices, so if two "
-                "of them describe one device, its pole is counted twice"
+                f"blocks {listed} {every} have the pole {_root_text(root)} rad/s: blocks are separate devices, so if "
+                "two of them describe one device, its pole is counted twice"
             )
             found.append(Problem("equal-poles", f"blocks.{names[0]}", message))
     return found

@@ -169,8 +169,21 @@ class Project:
             unstable_poles_all_closed=all_closed,
             hidden_unstable_poles=self._hidden(),
             loops=loops,
-            warnings=self.warnings,
+            warnings=(*self.warnings, *self._incomplete_crossings(loops)),
         )
+
+    def _incomplete_crossings(self, loops: Sequence[LoopResult]) -> list[Problem]:
+        """A word where the crossings listed do not sum to the proved N, for instance because there are infinitely many."""
+        found = []
+        for loop in loops:
+            _, _, studied = self._study(self._stage(loop.name))
+            if studied and not studied.complete:
+                message = (
+                    f"loop `{loop.name}`: the crossings of the real axis that are listed do not sum to N (there may be "
+                    "infinitely many); the count itself is proved"
+                )
+                found.append(Problem("crossings-incomplete", f"loops.{loop.name}", message))
+        return found
 
     @property
     def _unit(self) -> float:

@@ -218,3 +218,14 @@ def test_uncut_feedback_without_a_solution_at_infinity_is_refused(tmp_path: Path
     blocks = '[blocks.A]\nformula = "(s + 2)/(s + 1)"\n[blocks.B]\nformula = "1/(s + 1)"'
     with pytest.raises(ProjectError, match="feedback through"):
         project(tmp_path, blocks, "B*z", more='z = "A*z + e"')
+
+
+def test_infinitely_many_crossings_are_said_to_be_incomplete(tmp_path: Path) -> None:
+    """-2 (s + 0.5)/(s + 1) + 0.5 exp(-s) circles -2 for ever at radius 1/2, always left of -1: N = 1 all the same."""
+    block = '[blocks.P]\nformula = "-2*(s + 0.5)/(s + 1) + 0.5*exp(-s)"'
+    found = project(tmp_path, block, "P*e")
+    loop = found.loop("loop")
+    assert loop.windings is not None
+    listed = sum(crossing.turns for crossing in loop.real_axis_crossings)
+    said = any(warning.code == "crossings-incomplete" for warning in found.check().warnings)
+    assert said == (listed != loop.windings)
