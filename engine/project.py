@@ -173,7 +173,7 @@ class Project:
         )
 
     def _incomplete_crossings(self, loops: Sequence[LoopResult]) -> list[Problem]:
-        """A word where the crossings listed do not sum to the proved N, for instance because there are infinitely many."""
+        """A word where the listed crossings do not sum to the proved N, as where there are infinitely many."""
         found = []
         for loop in loops:
             _, _, studied = self._study(self._stage(loop.name))
