@@ -17,7 +17,8 @@ from encircle.engine.sampled_curve import SampledCurve, sample
 
 DENSITIES = (1, 4, 16)
 # With dead time L is followed down to these sizes until two changes of Z are found
-SMALLEST = (0.05, 1e-3, 1e-6)
+SMALLEST = (0.5, 0.2, 0.05, 1e-3, 1e-6)
+SMALL = 0.05  # what lies beyond changes no extreme that matters
 LONGEST_SEARCH = 5_000  # samples after which no further changes are looked for
 
 
@@ -72,8 +73,8 @@ def _study(
         curve = sample_loop(counter, loop, smallest, density)
         crossings = negative_crossings(loop, curve)
         complete = _complete_up_to(loop, curve)
-        changes = _changes_between(crossings, 1.0, complete)
-        if not loop.endless or changes >= 2 or len(curve.omega) > LONGEST_SEARCH:
+        enough = _changes_between(crossings, 1.0, complete) >= 2 or len(curve.omega) > LONGEST_SEARCH
+        if not loop.endless or (enough and (smallest <= SMALL or _extremes_inside(curve))):
             break
     arcs = unbounded_arcs(loop, curve)
     explained = windings is None or _turns(crossings, arcs) == windings
@@ -88,10 +89,17 @@ def _study(
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, found, complete=explained)
 
 
+def _extremes_inside(curve: SampledCurve) -> bool:
+    """Whether the least |1 + L| and the largest |T| sampled cannot be beaten where |L| stays below its last sample."""
+    tail = float(np.abs(curve.L[-1]))
+    F = np.abs(1.0 + curve.L)
+    return bool(F.min() <= 1.0 - tail and (np.abs(curve.L) / F).max() >= tail / (1.0 - tail))
+
+
 def _reach(loop: OpenLoop, crossings: Sequence[NegativeCrossing], complete: float) -> Reach:
-    """How far the ranges go; where L grows for ever while it turns, they start at the second change below 1."""
+    """How far the ranges go; where L turns for ever beyond -1, they start at the second change below 1."""
     lower, upper = loop.infinity.factor_limits()
-    if loop.endless and loop.infinity.order > 0.0:
+    if loop.endless and loop.infinity.largest_size() > 1.0:
         changes = sorted(-1.0 / c.value for c in crossings if c.turns != 0 and c.value < -1.0)
         lower = changes[-2] if len(changes) > 1 else None
     return Reach(lower, upper, complete if loop.endless else None)
