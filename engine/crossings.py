@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from encircle.engine.open_loop import OpenLoop
-from encircle.engine.result import Arc, ComplexArray, FloatArray
+from encircle.engine.result import Arc, BoolArray, ComplexArray, FloatArray
 from encircle.engine.root_finding import bracketed_roots
 from encircle.engine.sampled_curve import SampledCurve
 
@@ -40,11 +40,16 @@ class UnboundedArc:
 Score = Callable[[ComplexArray, ComplexArray], FloatArray]
 
 
-def roots_of(loop: OpenLoop, curve: SampledCurve, score: Score) -> FloatArray:
-    """Frequencies where ``score(L, dL/d omega)`` changes sign between neighbours, refined, ascending."""
+def roots_of(loop: OpenLoop, curve: SampledCurve, score: Score, near: BoolArray | None = None) -> FloatArray:
+    """Frequencies where ``score(L, dL/d omega)`` changes sign between neighbours, refined, ascending.
+
+    ``near`` (n,): only roots beside samples where it holds.
+    """
     with np.errstate(all="ignore"):
         values = score(curve.L, curve.slope)
         change = curve.joined & (np.sign(values[1:]) != np.sign(values[:-1])) & (values[1:] != 0.0)
+    if near is not None:
+        change &= near[1:] | near[:-1]
     at = np.flatnonzero(change)
 
     def at_frequency(omega: FloatArray) -> FloatArray:

@@ -22,6 +22,8 @@ from encircle.engine.result import (
 )
 from encircle.engine.sampled_curve import SampledCurve
 
+BESIDE_EXTREME = 2.5  # neighbours differ by less (``sampled_curve``): a sample within this factor may lie beside the extreme
+
 
 def margins(loop: OpenLoop, curve: SampledCurve, ranges: Sequence[FactorRange], unit: float) -> Margins:
     """All margins; ``unit`` is the file's frequency unit in rad/s (2 pi for Hz)."""
@@ -92,7 +94,9 @@ def _delay_margin(loop: OpenLoop, crossovers: FloatArray, unit: float) -> DelayM
 
 def _least_distance(loop: OpenLoop, curve: SampledCurve) -> tuple[float, float]:
     """The least |1 + L| and its frequency in rad/s: inside, at 0 or in the limit at infinity."""
-    omega = roots_of(loop, curve, lambda L, slope: (slope / (1.0 + L)).real)
+    sizes = np.abs(1.0 + curve.L)
+    near = sizes <= BESIDE_EXTREME * sizes.min(initial=np.inf)
+    omega = roots_of(loop, curve, lambda L, slope: (slope / (1.0 + L)).real, near)
     L, _ = loop.at(omega)
     found = list(zip(np.abs(1.0 + L).tolist(), omega.tolist(), strict=True))
     near = loop.zero
@@ -104,7 +108,10 @@ def _least_distance(loop: OpenLoop, curve: SampledCurve) -> tuple[float, float]:
 
 def _largest_complementary(loop: OpenLoop, curve: SampledCurve) -> tuple[float, float]:
     """The largest |L/(1 + L)| and its frequency in rad/s: inside, at 0, at a pole of L on the axis or at infinity."""
-    omega = roots_of(loop, curve, lambda L, slope: (slope / (L * (1.0 + L))).real)
+    with np.errstate(all="ignore"):
+        sampled = np.nan_to_num(np.abs(curve.L / (1.0 + curve.L)))
+    near = sampled * BESIDE_EXTREME >= sampled.max(initial=0.0)
+    omega = roots_of(loop, curve, lambda L, slope: (slope / (L * (1.0 + L))).real, near)
     L, _ = loop.at(omega)
     with np.errstate(all="ignore"):
         sizes = np.abs(L / (1.0 + L))
