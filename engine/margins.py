@@ -22,7 +22,8 @@ from encircle.engine.result import (
 )
 from encircle.engine.sampled_curve import SampledCurve
 
-BESIDE_EXTREME = 2.5  # neighbours differ by less (``sampled_curve``): a sample within this factor may lie beside the extreme
+# Neighbouring samples differ by less than this, so a sample within the factor may lie beside the extreme
+BESIDE_EXTREME = 2.5
 
 
 def margins(loop: OpenLoop, curve: SampledCurve, ranges: Sequence[FactorRange], unit: float) -> Margins:
