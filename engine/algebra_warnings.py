@@ -7,6 +7,7 @@ from collections import Counter, defaultdict
 from encircle.engine.errors import Problem
 from encircle.engine.loop_system import LoopSystem
 from encircle.engine.polynomial import Polynomial
+from encircle.engine.transfer_function import cancelled_right_half_plane
 
 
 def algebra_warnings(system: LoopSystem) -> tuple[Problem, ...]:
@@ -18,8 +19,7 @@ def _cancelled(system: LoopSystem) -> list[Problem]:
     """A common factor on or right of the axis that the reduction of one block removed."""
     found = []
     for name, transfer in system.transfers.items():
-        removed = [factor for factor, _ in transfer.cancelled if any(factor.count_right())]
-        if removed or transfer.power_cancelled:
+        if cancelled_right_half_plane(transfer):
             message = (
                 f"block `{name}`: numerator and denominator share a root on or right of the imaginary axis, which was "
                 "cancelled; if the device has that mode, write it as two blocks"

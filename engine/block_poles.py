@@ -13,17 +13,12 @@ class FactorPoles:
     """Zeros of a product of polynomial factors, with multiplicity: how many right of the axis, which, and those on it.
 
     ``right`` counts all; ``unstable`` (rad/s) lists a pair once, im >= 0; ``on_axis`` lists frequencies >= 0 in
-    rad/s, a pair once, so that ``axis_count`` may exceed its length.
+    rad/s, a pair once.
     """
 
     right: int
     unstable: tuple[complex, ...]
     on_axis: tuple[float, ...]
-
-    @property
-    def axis_count(self) -> int:
-        """A pair counts two."""
-        return sum(1 if frequency == 0.0 else 2 for frequency in self.on_axis)
 
 
 def poles_of(powers: Powers) -> FactorPoles:

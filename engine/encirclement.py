@@ -20,8 +20,8 @@ from enum import Enum
 import numpy as np
 
 from encircle.engine.result import BoolArray, ComplexArray, FloatArray
-from encircle.engine.rounding import UNIT
-from encircle.engine.term_models import TINIEST, Models
+from encircle.engine.rounding import TINY, UNIT
+from encircle.engine.term_models import Models
 
 FLOOR = 1e-12  # narrowest cell, relative to its frequency or to the lowest feature
 FEWEST_EVALUATIONS = 200_000  # cells evaluated before a count gives up, besides those of the start grid
@@ -223,7 +223,7 @@ def _distance_with_chord(
     best = np.full(c.shape, -np.inf)
     for direction in [c, 1j * d, 1j * longest, *corners]:  # one too short has no accurate normal: passed over
         length = np.abs(direction)
-        n = np.where(length > TINIEST, direction / length, np.nan)
+        n = np.where(length > TINY, direction / length, np.nan)
         bound = np.abs((n.conj() * c).real) - np.abs((n.conj() * d).real) - np.abs((n.conj() * longest).real)
         best = np.fmax(best, bound)
     return best, radius

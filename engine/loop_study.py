@@ -72,9 +72,12 @@ def _study(
     for smallest in SMALLEST:
         curve = sample_loop(counter, loop, smallest, density)
         crossings = negative_crossings(loop, curve)
-        complete = _complete_up_to(loop, curve)
-        enough = _changes_between(crossings, 1.0, complete) >= 2 or len(curve.omega) > LONGEST_SEARCH
-        if not loop.endless or (enough and (smallest <= SMALL or _extremes_inside(curve))):
+        complete = _complete_up_to(loop, curve, smallest)
+        if not loop.endless:
+            break
+        enough = _changes_between(crossings, 1.0, complete) >= 2
+        long = len(curve.omega) > LONGEST_SEARCH and smallest <= SMALL
+        if long or (enough and (smallest <= SMALL or _extremes_inside(curve, smallest))):
             break
     arcs = unbounded_arcs(loop, curve)
     explained = windings is None or _turns(crossings, arcs) == windings
@@ -89,9 +92,9 @@ def _study(
     return LoopStudy(curve, tuple(crossings), tuple(arcs), ranges, found, complete=explained)
 
 
-def _extremes_inside(curve: SampledCurve) -> bool:
-    """Whether the least |1 + L| and the largest |T| sampled cannot be beaten where |L| stays below its last sample."""
-    tail = float(np.abs(curve.L[-1]))
+def _extremes_inside(curve: SampledCurve, smallest: float) -> bool:
+    """Whether the least |1 + L| and the largest |T| sampled cannot be beaten where |L| is below ``smallest``."""
+    tail = max(float(np.abs(curve.L[-1])), smallest)
     F = np.abs(1.0 + curve.L)
     return bool(F.min() <= 1.0 - tail and (np.abs(curve.L) / F).max() >= tail / (1.0 - tail))
 
@@ -105,13 +108,14 @@ def _reach(loop: OpenLoop, crossings: Sequence[NegativeCrossing], complete: floa
     return Reach(lower, upper, complete if loop.endless else None)
 
 
-def _complete_up_to(loop: OpenLoop, curve: SampledCurve) -> float:
-    """The factor below which all crossings are sampled: beyond the last sample |L| stays below its bounds there.
+def _complete_up_to(loop: OpenLoop, curve: SampledCurve, smallest: float) -> float:
+    """The factor below which all crossings are sampled: where |L| is below ``smallest`` the curve is not resolved, and
+    beyond the last sample |L| stays below its bounds there.
 
     Where L keeps turning about a point left of -1, what is not sampled lies at factors below 1 only.
     """
     bound = loop.infinity.largest_size()
-    tail = max(float(np.abs(curve.L[-1])), bound)
+    tail = max(float(np.abs(curve.L[-1])), smallest, bound)
     return 1.0 / tail if tail > 0.0 and bound < 1.0 else np.inf
 
 

@@ -22,10 +22,6 @@ from encircle.engine.result import FloatArray
 UNIT = 2.0**-53
 SLACK = 8.0 * UNIT  # one complex product or quotient, or one elementary function (4 units in the last place)
 TINY = 1e-280  # added to every radius: more than all that underflow can lose
-LIBM_ASSUMPTION = (
-    "sums, products, quotients and square roots of doubles are rounded to nearest, and the elementary functions of "
-    "this machine err by at most 4 units in the last place (checked on a table)"
-)
 
 
 def outward(radius: FloatArray) -> FloatArray:
@@ -35,7 +31,8 @@ def outward(radius: FloatArray) -> FloatArray:
 
 def inflated_half(centre: FloatArray, half: FloatArray) -> FloatArray:
     """Half widths rounded outward so that neighbouring cells overlap."""
-    return half * (1.0 + 4.0 * UNIT) + 4.0 * UNIT * np.abs(centre)
+    inflated: FloatArray = half * (1.0 + 4.0 * UNIT) + 4.0 * UNIT * np.abs(centre)
+    return inflated
 
 
 @cache

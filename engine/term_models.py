@@ -29,11 +29,9 @@ from encircle.engine.grids import distinct
 from encircle.engine.measured_factor import MeasuredModel
 from encircle.engine.polynomial import Polynomial
 from encircle.engine.result import ComplexArray, FloatArray
-from encircle.engine.rounding import UNIT
+from encircle.engine.rounding import SLACK, TINY, UNIT, inflated_half
 from encircle.engine.sections import Sections, sections
 
-SLACK = 8.0 * UNIT  # charged per elementary complex operation; the worst measured is below 3 units
-TINIEST = 1e-280  # added to every radius against underflow
 LARGEST_EXPONENT = 1000.0  # binary exponent up to which a partial product surely stays within the doubles
 LARGEST_DELAY_TURN = 1.5  # rad per half cell, beyond which a dead time is replaced by the unit disc
 ONE = Polynomial((Fraction(1),))  # stands in a product without factors
@@ -70,11 +68,11 @@ class Models:
             return self._combine(weights)
 
     def _combine(self, weights: FloatArray) -> Models:
-        size = np.abs(weights) + TINIEST  # a weight may have underflowed
+        size = np.abs(weights) + TINY  # a weight may have underflowed
         bands = np.abs(self.g).sum(axis=0) + np.abs(self.u).sum(axis=0)
         total = size @ (np.abs(self.v) + np.abs(self.d) + np.abs(self.e) + bands)
         slack = (weights.shape[1] + 4) * SLACK
-        radius = size @ self.r * (1.0 + slack) + slack * total + TINIEST
+        radius = size @ self.r * (1.0 + slack) + slack * total + TINY
         return Models(
             _real_times(weights, self.v),
             _real_times(weights, self.d),
@@ -223,7 +221,7 @@ class TermModels:
         tail = X - 1.0 - E1 - (E2 + 0.5 * E1 * E1)
         slack = self._slack[:, None] + 3.0 * UNIT * self.delays[:, None] * w
         size_V = np.abs(V)
-        r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINIEST * X  # V may have underflowed
+        r = size_V * (REMAINDER_SCALE * tail + slack * X) + TINY * X  # V may have underflowed
         difference: FloatArray | float = 0.0
         if self._delta.any():
             difference = self._delta[:, None] * self._values(factors.size, 1.0 / (np.abs(v) * room))
@@ -235,7 +233,7 @@ class TermModels:
             X, difference = X * whole, difference * whole
         d, e = V * A, V * (B + 0.5 * A * A)
         if fast.any():
-            r = np.where(fast, size_V * X * (1.0 + slack) + difference + TINIEST * X, r)
+            r = np.where(fast, size_V * X * (1.0 + slack) + difference + TINY * X, r)
             g, u = np.where(fast, 0.0, g), np.where(fast, 0.0, u)
             V, d, e = (np.where(fast, 0.0, part) for part in (V, d, e))
         return Models(V, d, e, r, g, u)
@@ -282,7 +280,7 @@ def _scaled_product(gathered: NumericArray, starts: NDArray[np.intp]) -> Numeric
     _, exponent = np.frexp(np.abs(gathered))
     mantissa = np.multiply.reduceat(gathered * np.ldexp(1.0, -exponent), starts, axis=0)
     total = np.add.reduceat(exponent, starts, axis=0)
-    kept = (np.abs(mantissa) > TINIEST) | np.logical_or.reduceat(gathered == 0.0, starts, axis=0)
+    kept = (np.abs(mantissa) > TINY) | np.logical_or.reduceat(gathered == 0.0, starts, axis=0)
     product: NumericArray = np.where(kept, mantissa, np.nan)
     for part in (product.real, product.imag) if np.iscomplexobj(product) else (product,):
         np.ldexp(part, total, out=part)
@@ -292,7 +290,7 @@ def _scaled_product(gathered: NumericArray, starts: NDArray[np.intp]) -> Numeric
 def centres_and_halves(lower: FloatArray, upper: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Centre and half width of each cell; the halves are widened so that rounded neighbours overlap."""
     w = 0.5 * (lower + upper)
-    return w, 0.5 * (upper - lower) * (1.0 + 4.0 * UNIT) + 4.0 * UNIT * w
+    return w, inflated_half(w, 0.5 * (upper - lower))
 
 
 def _layout(terms: Sequence[Powers], places: Mapping[Factor, list[int]], factors: int) -> _Layout:
